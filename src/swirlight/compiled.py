@@ -1,0 +1,67 @@
+"""How kernels are compiled: one decorator, one cache, explicit floating-point flags.
+
+numba's own cache does not notice an edited callee, so the cache folder is keyed by the
+package version and a hash of every source file that may hold a kernel. A package folder
+that cannot be cached (read-only, or not a file) still works: it compiles at each start.
+"""
+
+import hashlib
+import os
+import pathlib
+import sys
+import warnings
+
+# NaN and infinity stay visible (no nnan, ninf): a trajectory that blows up must be seen.
+FAST = {"reassoc", "nsz", "contract", "arcp", "afn"}
+KERNEL_ROOMS = ("light", "forces", "motion", "observe")
+# Parallel kernels split their work into this many parts whatever the number of threads,
+# and add the parts in order: the same bits on any machine.
+CHUNKS = 32
+
+
+def _source_hash():
+    root = pathlib.Path(__file__).parent
+    digest = hashlib.sha256()
+    for path in sorted(p for room in KERNEL_ROOMS for p in (root / room).rglob("*.py")):
+        digest.update(path.name.encode() + b"\0" + path.read_bytes())
+    return digest.hexdigest()[:12]
+
+
+def cache_folder():
+    """The folder that holds compiled kernels: NUMBA_CACHE_DIR if set, else the user's cache."""
+    base = os.environ.get("XDG_CACHE_HOME") or pathlib.Path.home() / ".cache"
+    return pathlib.Path(base) / "swirlight" / f"kernels-{_source_hash()}"
+
+
+if "numba" not in sys.modules:
+    # Idle OpenMP threads must sleep: on a busy machine spinning ones cost a factor of ten.
+    os.environ.setdefault("OMP_WAIT_POLICY", "PASSIVE")
+if not os.environ.get("NUMBA_CACHE_DIR"):
+    os.environ["NUMBA_CACHE_DIR"] = str(cache_folder())
+
+import numba  # noqa: E402
+
+numba.config.CACHE_DIR = os.environ["NUMBA_CACHE_DIR"]
+
+
+def kernel(function=None, *, fast=False, parallel=False, **options):
+    """Compile a plain function on floats and arrays; the package's only door to numba.
+
+    fast : allow reassociation, contraction and reciprocal estimates (never "no NaN").
+    parallel : `numba.prange` loops run on threads; reduce per chunk, in order.
+    """
+    if function is None:
+        return lambda f: kernel(f, fast=fast, parallel=parallel, **options)
+    settings = {
+        "fastmath": FAST if fast else False,
+        "parallel": parallel,
+        "nogil": True,
+        "error_model": "numpy",
+        **options,
+    }
+    try:
+        return numba.njit(cache=True, **settings)(function)
+    except RuntimeError:  # no locator available: nowhere to keep a cache
+        warnings.warn("no folder to keep compiled kernels in; they are compiled at each start"
+                      " (set NUMBA_CACHE_DIR)", stacklevel=2)
+        return numba.njit(**settings)(function)
