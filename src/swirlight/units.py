@@ -25,5 +25,5 @@ BAR = 1e5 * NANOMETRE**3 * JOULE  # u/nm/ps² in 1 bar
 BOLTZMANN = _si.k * JOULE  # u nm²/ps²/K
 HBAR = _si.hbar * JOULE / PICOSECOND  # u nm²/ps
 LIGHT_SPEED = _si.c * PICOSECOND / NANOMETRE  # nm/ps
-VACUUM_PERMITTIVITY = _si.epsilon_0 / (_si.e**2 * JOULE * NANOMETRE)  # e² ps²/(u nm³)
+VACUUM_PERMITTIVITY = _si.epsilon_0 * NANOMETRE / (_si.e**2 * JOULE)  # e² ps²/(u nm³)
 COULOMB = 1.0 / (4.0 * _si.pi * VACUUM_PERMITTIVITY)  # u nm³/ps²/e²
