@@ -1,0 +1,109 @@
+"""A first arrangement of the bodies: a lattice, drawn orientations, overlaps removed.
+
+The lattice is face-centred and fills the box; where it has more sites than there are bodies
+the vacancies are drawn, and so is which species sits where. Orientations are uniform. Bodies
+that then overlap are moved apart by steepest descent whose moves are capped, because forces
+at overlap are large beyond all meaning.
+"""
+
+import numpy as np
+
+from swirlight.errors import RunError
+
+_FACE_CENTRED = np.array([[0, 0, 0], [0, 0.5, 0.5], [0.5, 0, 0.5], [0.5, 0.5, 0]]) + 0.25
+LARGEST_MOVE = 0.01  # nm, of any site in one descent step
+DESCENT_STEPS = 400
+ENOUGH = 1.5  # kT a body: a descent that gains less than this in `PATIENCE` steps is over
+PATIENCE = 20
+
+
+def lattice_positions(count, box, random):
+    """`count` sites of a face-centred lattice that fills the box, in drawn order. [nm]
+
+    box : (3,) edges. [nm]
+    random : numpy Generator; draws the vacancies and the order.
+    Returns (count, 3).
+    """
+    cells = _cells(count, box)
+    corners = np.stack(np.meshgrid(*map(np.arange, cells), indexing="ij"), axis=-1).reshape(-1, 3)
+    sites = (corners[:, None, :] + _FACE_CENTRED).reshape(-1, 3) / cells * box
+    return sites[random.permutation(len(sites))[:count]]
+
+
+def _cells(count, box):
+    """Cells along each edge: the fewest that hold `count` bodies, as nearly cubic as the box allows."""
+    ideal = box * (count / 4.0 / np.prod(box)) ** (1 / 3)
+    near = [range(max(1, int(np.floor(x)) - 1), int(np.ceil(x)) + 2) for x in ideal]
+    enough = [
+        (a, b, c) for a in near[0] for b in near[1] for c in near[2] if 4 * a * b * c >= count
+    ]
+    skew = [np.ptp(np.log(np.array(n) / ideal)) for n in enough]
+    waste = [4 * np.prod(n) / count - 1 for n in enough]
+    return np.array(enough[int(np.argmin(np.add(waste, skew)))])
+
+
+def uniform_orientations(count, random):
+    """(count, 4) unit quaternions, uniform over rotations (normalised normal vectors)."""
+    q = random.standard_normal((count, 4))
+    return q / np.linalg.norm(q, axis=1, keepdims=True)
+
+
+def remove_overlaps(system, state, field):
+    """Descend in energy, moving `state` in place, until little is gained; return the energy.
+
+    field : a ForceField of the system.
+    Raises RunError when the energy stays meaningless: the density is too high for the bodies.
+    """
+    reach = np.array([max(s.radius, 0.05) for s in system.species])[system.species_of, None]
+    scale, history = 1e-6, []
+    forces = field.evaluate(state.position, state.orientation, state.box, energies=True)
+    energy, force, torque = forces.energy, forces.force.copy(), forces.torque.copy()
+    for _ in range(DESCENT_STEPS):
+        move = _capped(scale * force)
+        # a rotation moves the outermost site by angle times reach
+        turn = _capped(scale * torque / reach) / reach
+        position = state.position + move
+        orientation = _turned(state.orientation, turn)
+        forces = field.evaluate(position, orientation, state.box, energies=True)
+        if np.isfinite(forces.energy) and forces.energy < energy:
+            state.position[:], state.orientation[:] = position, orientation
+            energy, force, torque = forces.energy, forces.force.copy(), forces.torque.copy()
+            scale *= 1.3
+            history.append(energy)
+            if len(history) > PATIENCE and _gained_little(history, system):
+                break
+        else:
+            scale *= 0.4
+            if scale < 1e-14:
+                break
+    if not np.isfinite(energy) or np.abs(force).max() > 1e6:
+        raise RunError(
+            "the bodies cannot be packed at this density without overlap: the largest force"
+            f" left is {np.abs(force).max():.1e} kJ/mol/nm; lower the density"
+        )
+    return energy
+
+
+def _gained_little(history, system):
+    thermal = system.temperature * 0.0083144626  # kT in u nm²/ps²; a threshold, not physics
+    return (history[-1 - PATIENCE] - history[-1]) < ENOUGH * thermal * system.bodies * 0.05
+
+
+def _capped(step):
+    length = np.linalg.norm(step, axis=1, keepdims=True)
+    return step * np.minimum(1.0, LARGEST_MOVE / np.maximum(length, 1e-300))
+
+
+def _turned(q, turn):
+    """Quaternions turned by small laboratory-frame rotation vectors."""
+    angle = np.linalg.norm(turn, axis=1, keepdims=True)
+    vector = turn * np.sinc(angle / (2 * np.pi)) / 2
+    w, x, y, z = q.T
+    a, (b, c, d) = np.cos(angle / 2)[:, 0], vector.T
+    turned = np.stack([
+        a * w - b * x - c * y - d * z,
+        a * x + b * w + c * z - d * y,
+        a * y - b * z + c * w + d * x,
+        a * z + b * y - c * x + d * w,
+    ], axis=1)
+    return turned / np.linalg.norm(turned, axis=1, keepdims=True)

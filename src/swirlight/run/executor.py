@@ -1,0 +1,103 @@
+"""Several trajectories side by side: one single-threaded worker process per core.
+
+Tasks are idempotent (their effect is files in the run folder, their value a small record),
+because a Dask scheduler starts a task again when its worker dies. Nothing durable is kept in
+the cluster: the disk is the truth.
+"""
+
+import contextlib
+import os
+import signal
+
+ONE_THREAD = {
+    "NUMBA_NUM_THREADS": "1",
+    "OMP_NUM_THREADS": "1",
+    "OPENBLAS_NUM_THREADS": "1",
+    "MKL_NUM_THREADS": "1",
+    "OMP_WAIT_POLICY": "PASSIVE",
+}
+
+
+def side_by_side(function, tasks, cores, each=lambda record: None, tick=lambda: None):
+    """Call ``function(*task)`` for every task; hand each result to `each` as it arrives.
+
+    cores : how many run at once; with one core (or one task) they run here, in order.
+    tick : called about once a second in the driver while workers are busy.
+    A task that raises does not stop the others: its exception is handed to `each`.
+    """
+    if cores == 1 or len(tasks) == 1:
+        for task in tasks:
+            try:
+                record = function(*task)
+            except Exception as error:
+                record = error
+            each(record)
+        return
+    with _cluster(min(cores, len(tasks))) as client:
+        _drive(client, function, tasks, each, tick)
+
+
+def _drive(client, function, tasks, each, tick):
+    from dask.distributed import wait
+
+    pending = {
+        client.submit(function, *task, pure=False, retries=0, priority=-i)
+        for i, task in enumerate(tasks)
+    }
+    while pending:
+        try:
+            done = wait(pending, timeout=1.0, return_when="FIRST_COMPLETED").done
+        except TimeoutError:
+            done = set()
+        tick()
+        for future in done:
+            each(future.exception() or future.result())
+        pending -= done
+
+
+@contextlib.contextmanager
+def _cluster(workers):
+    """An embedded cluster on loopback; its processes are spawned with one thread each."""
+    import dask
+    from dask.distributed import Client, LocalCluster
+
+    settings = {
+        "distributed.worker.daemon": True,
+        "distributed.admin.tick.limit": "1h",  # a kernel may hold a worker's loop for long
+        "distributed.comm.timeouts.connect": "30s",
+        "distributed.scheduler.allowed-failures": 2,
+        "distributed.worker.memory.terminate": False,
+        "distributed.worker.memory.pause": False,
+        "distributed.worker.memory.spill": False,
+        "distributed.worker.memory.target": False,
+        "distributed.logging": {"distributed": "error", "bokeh": "error"},
+    }
+    with dask.config.set(settings), _environment(ONE_THREAD):
+        cluster = LocalCluster(
+            n_workers=workers, threads_per_worker=1, processes=True, host="127.0.0.1",
+            dashboard_address="127.0.0.1:0", worker_dashboard_address="127.0.0.1:0",
+            silence_logs=50, memory_limit=0,
+        )
+        with cluster, Client(cluster) as client:
+            client.run(_ignore_interrupts)
+            yield client
+
+
+def _ignore_interrupts():
+    """Ctrl-C reaches the whole process group; only the driver may decide what it means."""
+    with contextlib.suppress(ValueError):
+        signal.signal(signal.SIGINT, signal.SIG_IGN)
+
+
+@contextlib.contextmanager
+def _environment(values):
+    before = {name: os.environ.get(name) for name in values}
+    os.environ.update(values)
+    try:
+        yield
+    finally:
+        for name, value in before.items():
+            if value is None:
+                os.environ.pop(name, None)
+            else:
+                os.environ[name] = value
