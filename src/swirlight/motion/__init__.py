@@ -1,0 +1,1 @@
+"""How the bodies move: free rotor, thermostats, and the step that composes them."""
