@@ -9,11 +9,13 @@ at overlap are large beyond all meaning.
 import numpy as np
 
 from swirlight.errors import RunError
+from swirlight.motion.rotation import from_vector, multiply, normalised
+from swirlight.units import BOLTZMANN
 
 _FACE_CENTRED = np.array([[0, 0, 0], [0, 0.5, 0.5], [0.5, 0, 0.5], [0.5, 0.5, 0]]) + 0.25
 LARGEST_MOVE = 0.01  # nm, of any site in one descent step
 DESCENT_STEPS = 400
-ENOUGH = 1.5  # kT a body: a descent that gains less than this in `PATIENCE` steps is over
+ENOUGH = 0.1  # kT a body: a descent that gains less than this in `PATIENCE` steps is over
 PATIENCE = 20
 
 
@@ -42,12 +44,6 @@ def _cells(count, box):
     return np.array(enough[int(np.argmin(np.add(waste, skew)))])
 
 
-def uniform_orientations(count, random):
-    """(count, 4) unit quaternions, uniform over rotations (normalised normal vectors)."""
-    q = random.standard_normal((count, 4))
-    return q / np.linalg.norm(q, axis=1, keepdims=True)
-
-
 def remove_overlaps(system, state, field):
     """Descend in energy, moving `state` in place, until little is gained; return the energy.
 
@@ -63,7 +59,7 @@ def remove_overlaps(system, state, field):
         # a rotation moves the outermost site by angle times reach
         turn = _capped(scale * torque / reach) / reach
         position = state.position + move
-        orientation = _turned(state.orientation, turn)
+        orientation = normalised(multiply(from_vector(turn), state.orientation))
         forces = field.evaluate(position, orientation, state.box, energies=True)
         if np.isfinite(forces.energy) and forces.energy < energy:
             state.position[:], state.orientation[:] = position, orientation
@@ -85,25 +81,10 @@ def remove_overlaps(system, state, field):
 
 
 def _gained_little(history, system):
-    thermal = system.temperature * 0.0083144626  # kT in u nm²/ps²; a threshold, not physics
-    return (history[-1 - PATIENCE] - history[-1]) < ENOUGH * thermal * system.bodies * 0.05
+    enough = ENOUGH * BOLTZMANN * system.temperature * system.bodies
+    return history[-1 - PATIENCE] - history[-1] < enough
 
 
 def _capped(step):
     length = np.linalg.norm(step, axis=1, keepdims=True)
     return step * np.minimum(1.0, LARGEST_MOVE / np.maximum(length, 1e-300))
-
-
-def _turned(q, turn):
-    """Quaternions turned by small laboratory-frame rotation vectors."""
-    angle = np.linalg.norm(turn, axis=1, keepdims=True)
-    vector = turn * np.sinc(angle / (2 * np.pi)) / 2
-    w, x, y, z = q.T
-    a, (b, c, d) = np.cos(angle / 2)[:, 0], vector.T
-    turned = np.stack([
-        a * w - b * x - c * y - d * z,
-        a * x + b * w + c * z - d * y,
-        a * y - b * z + c * w + d * x,
-        a * z + b * y - c * x + d * w,
-    ], axis=1)
-    return turned / np.linalg.norm(turned, axis=1, keepdims=True)

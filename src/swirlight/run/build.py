@@ -1,0 +1,159 @@
+"""From a validated config to the things a run calculates with: system, state, field, light."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from swirlight import units
+from swirlight.forces.box import check_box
+from swirlight.forces.field import ForceField
+from swirlight.light.build import bias_from_config, pulses_from_config
+from swirlight.light.light import Light
+from swirlight.motion.draw import draw_motion, draw_orientations
+from swirlight.motion.step import Mover
+from swirlight.run.arrange import lattice_positions, remove_overlaps
+from swirlight.species.load import load_species
+from swirlight.state import State
+from swirlight.system import Interactions, System
+
+
+def build_system(config):
+    """The System that a config describes.
+
+    Raises InputError for species that cannot be used.
+    """
+    species = tuple(load_species(s.use, folder=config.folder) for s in config.sample.species)
+    forces = config.forces
+    overrides = tuple(
+        (tuple(p.between[0].rsplit(".", 1)), tuple(p.between[1].rsplit(".", 1)), p.sigma, p.epsilon)
+        for p in forces.pairs
+    )
+    interactions = Interactions(
+        cutoff=forces.cutoff,
+        cutoff_form=forces.cutoff_form,
+        electrostatics=forces.electrostatics,
+        tolerance=forces.tolerance,
+        splitting=None if forces.splitting == "auto" else forces.splitting,
+        mesh_order=None if forces.mesh == "auto" else forces.mesh.order,
+        mesh_spacing=None if forces.mesh == "auto" else forces.mesh.spacing,
+        reaction_permittivity=(
+            np.inf if forces.reaction_permittivity == "conducting" else forces.reaction_permittivity
+        ),
+        damping=forces.damping,
+        mixing=forces.mixing,
+        overrides=overrides,
+        precision=forces.precision,
+    )
+    counts = tuple(s.count for s in config.sample.species)
+    return System(species, counts, interactions, temperature=config.sample.temperature)
+
+
+def box_edges(config, system):
+    """(3,) edges: as given, or of the cube that has the density asked for. [nm]"""
+    if config.sample.edges is not None:
+        return np.array(config.sample.edges, float)
+    volume = float(system.mass.sum()) / config.sample.density
+    return np.full(3, volume ** (1 / 3))
+
+
+def lattice_start(config, system, box):
+    """A drawn first state: lattice, orientations, overlaps removed, thermal momenta."""
+    random = np.random.Generator(np.random.PCG64(np.random.SeedSequence(config.seed)))
+    zeros = np.zeros((system.bodies, 3))
+    state = State(
+        position=lattice_positions(system.bodies, box, random),
+        orientation=draw_orientations(system.bodies, random),
+        velocity=zeros, angular_momentum=zeros.copy(), box=box, random=random,
+    )
+    remove_overlaps(system, state, ForceField(system, box))
+    draw_motion(system, state)
+    return state
+
+
+def first_state(config, system):
+    """Where a run begins: a start file, or a drawn arrangement.
+
+    Raises InputError when the box is too small or the start file holds other bodies.
+    """
+    if config.sample.begin_from is not None:
+        from swirlight.store.state_file import load_state
+
+        state = load_state(config.folder / config.sample.begin_from, system)
+        check_box(state.box, system)
+        return state
+    box = box_edges(config, system)
+    check_box(box, system)
+    return lattice_start(config, system, box)
+
+
+@dataclass
+class Evaluation:
+    """Forces on every body at one instant.
+
+    energy : potential energy, bias field included. [kJ/mol]
+    terms : its parts by name. [kJ/mol]
+    virial : molecular virial −dU/dlnλ. [kJ/mol]
+    force, torque : (N, 3) of all causes, laboratory frame. [kJ/mol/nm], [kJ/mol]
+    light_torque, light_force : (N, 3) the light's own part.
+    light_energy : energy of the bodies in the light, never part of `energy`. [kJ/mol]
+    absorbed_power : [kJ/mol/ps]
+    """
+
+    energy: float
+    terms: dict
+    virial: float
+    force: np.ndarray
+    torque: np.ndarray
+    light_torque: np.ndarray
+    light_force: np.ndarray
+    light_energy: float
+    absorbed_power: float
+
+
+class Scene:
+    """A config brought to life without running it.
+
+    system : what does not change; state : what does, arrays may be assigned.
+    """
+
+    def __init__(self, config):
+        self.config = config
+        self.system = build_system(config)
+        self.state = first_state(config, self.system)
+        stage = config.stages[-1]
+        pulses = pulses_from_config(config.light, self.system, stage)
+        self.light = Light(self.system, pulses, bias_from_config(config.bias_field))
+
+    def evaluate(self, time="0 ps"):
+        """Energies, forces and torques of the state as it is now, lit as at `time`.
+
+        time : since the start of the lit stage, a quantity with its unit.
+        Returns an Evaluation. Raises InputError for a time that cannot be read, or a box
+        that is too small for the cutoff.
+        """
+        state = self.state
+        check_box(state.box, self.system)
+        mover = Mover(self.system, ForceField(self.system, state.box), self.light, 1e-3, None)
+        mover.begin(state, units.parse_quantity(time, "time"), energies=True)
+        load, out = mover.load, 1.0 / units.KJ_PER_MOL
+        terms = {name: out * value for name, value in load.field.terms.items()}
+        terms["bias"] = out * load.bias_energy
+        return Evaluation(
+            energy=sum(terms.values()),
+            terms=terms,
+            virial=out * load.field.virial,
+            force=out * load.force,
+            torque=out * load.torque,
+            light_torque=out * load.light_torque,
+            light_force=out * load.light_force,
+            light_energy=out * load.light_energy,
+            absorbed_power=out * load.absorbed_power,
+        )
+
+
+def build(config):
+    """A Scene of the config: ``scene.system``, ``scene.state``, ``scene.evaluate(time)``.
+
+    Raises InputError for a sample that cannot be built.
+    """
+    return Scene(config)

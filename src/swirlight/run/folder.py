@@ -1,0 +1,108 @@
+"""A run folder: which file lies where, and how it is made.
+
+Everything a run needs is copied into its folder, so that it can be resumed after the
+originals were edited or lost, and on another machine.
+"""
+
+import pathlib
+import shutil
+
+import yaml
+
+from swirlight import __version__
+from swirlight.config import load_config
+from swirlight.errors import InputError
+from swirlight.run.stop import StopFile
+from swirlight.species.load import find_species
+from swirlight.store.durable import make_folder, write_bytes
+
+
+class RunFolder:
+    """Paths inside a run folder.
+
+    root : the folder; `work` inside it is hidden and goes when the run is complete.
+    """
+
+    def __init__(self, root):
+        self.root = pathlib.Path(root)
+        self.work = self.root / ".work"
+        self.config_file = self.root / "config.yaml"
+        self.inputs = self.root / "inputs"
+        self.starts = self.root / "starts"
+        self.equilibrium = self.root / "equilibrium.h5"
+        self.continuation = self.root / "continuation.h5"
+        self.summary = self.root / "summary.json"
+        self.picture = self.root / "response.png"
+        self.stop = StopFile(self.work / "stop")
+
+    def start(self, index):
+        """Start file of start `index`."""
+        return self.starts / f"{index:03d}.h5"
+
+    def final(self, name):
+        """The finished trajectory `name`; its presence means that it is complete."""
+        return self.root / f"{name}.h5"
+
+    def working(self, name):
+        """Working folder of trajectory `name` while it is under way."""
+        return self.work / name
+
+    def failure(self, name):
+        """Where the reason is kept when trajectory `name` cannot be finished."""
+        return self.working(name) / "FAILED.json"
+
+    def config(self):
+        """The config this folder was made from.
+
+        Raises InputError when this is not a run folder.
+        """
+        if not self.config_file.is_file():
+            raise InputError(f"{self.root}: not a run folder: it has no config.yaml")
+        return load_config(self.config_file)
+
+
+def create(config, into=None):
+    """Make the run folder of a config.
+
+    into : the folder; the config's `output` (relative to the current folder) if not given.
+    Raises InputError when it exists already, naming `resume`.
+    """
+    root = pathlib.Path(into if into is not None else config.output)
+    if root.exists() and (not root.is_dir() or any(root.iterdir())):
+        raise InputError(
+            f"{root}: exists already; `swirlight resume {root}` goes on with an interrupted run,"
+            " --into names another folder"
+        )
+    folder = RunFolder(root)
+    resolved = config.resolved()
+    for path in (folder.inputs, folder.starts, folder.work):
+        make_folder(path)
+    _copy_inputs(config, resolved, folder)
+    text = yaml.safe_dump(resolved, sort_keys=False, allow_unicode=True, width=100)
+    head = f"# resolved by swirlight {__version__}: every default written out\n"
+    write_bytes(folder.config_file, (head + text).encode())
+    return folder
+
+
+def _copy_inputs(config, resolved, folder):
+    """Copy species files, envelope tables and a start file; point `resolved` at the copies."""
+    for entry in resolved["sample"]["species"]:
+        entry["use"] = _copy(find_species(entry["use"], config.folder), folder)
+    for pulse in resolved.get("light") or []:
+        if isinstance(pulse.get("envelope"), dict) and "file" in pulse["envelope"]:
+            table = config.folder / pulse["envelope"]["file"]
+            pulse["envelope"]["file"] = _copy(table, folder)
+    if resolved["sample"].get("begin_from") is not None:
+        resolved["sample"]["begin_from"] = _copy(
+            config.folder / resolved["sample"]["begin_from"], folder
+        )
+
+
+def _copy(source, folder):
+    source = pathlib.Path(source)
+    target, count = folder.inputs / source.name, 1
+    while target.exists() and target.read_bytes() != source.read_bytes():
+        count += 1
+        target = folder.inputs / f"{source.stem}-{count}{source.suffix}"
+    shutil.copyfile(source, target)
+    return str(target.relative_to(folder.root))
