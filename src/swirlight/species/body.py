@@ -15,6 +15,7 @@ class OpticalResponse:
     polarizability, absorptive : (3, 3) real symmetric.
     gyration : (3,) axial vector g, p = i g × 𝓔.
     rectification : (3, 3) κ, p0 = κ G. [e³ ps⁴/(u² nm): a dipole per field squared]
+    source : where the numbers are from, "" when the species' own source says it.
     """
 
     at: float | None
@@ -22,6 +23,16 @@ class OpticalResponse:
     absorptive: np.ndarray
     gyration: np.ndarray
     rectification: np.ndarray
+    source: str = ""
+
+
+@dataclass(frozen=True)
+class LiquidState:
+    """A state in which the real liquid exists: temperature [K], density [u/nm³], its source."""
+
+    temperature: float
+    density: float
+    source: str
 
 
 @dataclass(frozen=True)
@@ -37,6 +48,8 @@ class Species:
     mixing : "lorentz-berthelot" or "geometric", between bodies of this species.
     responses : one entry per wavelength given; empty: the body does not see averaged light.
     heat_capacity : C_V per body [u nm²/ps²/K] or None; with its source.
+    liquid : a handbook state of the liquid, or None.
+    notes : what whoever uses the species must be told.
     """
 
     name: str
@@ -54,6 +67,7 @@ class Species:
     responses: tuple[OpticalResponse, ...] = ()
     heat_capacity: float | None = None
     heat_capacity_source: str = ""
+    liquid: LiquidState | None = None
     notes: tuple[str, ...] = ()
 
     @property
