@@ -32,7 +32,7 @@ KJ_PER_MOL = 1e3 / _si.N_A * JOULE  # u nm²/ps² in 1 kJ/mol
 VOLT_PER_METRE = _si.e * NANOMETRE * JOULE  # u nm/ps²/e in 1 V/m
 COULOMB_METRE = 1.0 / (_si.e * NANOMETRE)  # e nm in 1 C m
 COULOMB_METRE2_PER_VOLT = COULOMB_METRE / VOLT_PER_METRE  # e² ps²/u in 1 C m²/V
-CUBIC_ANGSTROM = 4e-30 * _si.pi * _si.epsilon_0 * COULOMB_METRE2_PER_VOLT  # e² ps²/u, α/4πε0 in 1 Å³
+CUBIC_ANGSTROM = 4e-30 * _si.pi * _si.epsilon_0 * COULOMB_METRE2_PER_VOLT  # e² ps²/u, α/4πε0 = 1 Å³
 WATT_PER_CM2 = JOULE * 1e4 * NANOMETRE**2 * PICOSECOND  # u/ps³ in 1 W/cm²
 BAR = 1e5 * NANOMETRE**3 * JOULE  # u/nm/ps² in 1 bar
 
@@ -228,7 +228,7 @@ def _between(value, kind, low, high):
     # The wavelength runs against the carrier's angular frequency.
     if not min(small, large) <= value <= max(small, large) or not math.isfinite(value):
         limits = [f"at least {low}"] * (low is not None) + [f"at most {high}"] * (high is not None)
-        raise ValueError(f"is out of range, {' and '.join(limits)} expected")
+        raise ValueError(f"is out of range ({', '.join(limits) or 'not finite'})")
     return value
 
 
