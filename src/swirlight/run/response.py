@@ -1,0 +1,118 @@
+"""A first, plain even and odd response of a finished run, at one time chosen before looking.
+
+Signals, all projected on the beam k̂ of the first exposed pulse and given per body:
+    light_impulse      ∫Σ τ_light dt · k̂ / N    [ħ]
+    angular_momentum   Σ L · k̂ / N              [ħ]
+    alignment          ⟨P2(axis · k̂)⟩, axis = body z
+The time is the end of the light: the first recorded one at which the last exposed pulse has
+fallen below 1e-4 of its peak, or the end of the stage.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from swirlight.light.exposure import exposed
+from swirlight.run.estimate import even_odd, half_width, mean_and_error
+from swirlight.units import HBAR
+
+SIGNALS = {"light_impulse": "hbar", "angular_momentum": "hbar", "alignment": ""}
+CLEAR, HINT = 0.001, 0.05  # p of the odd part that is called a detection, and a hint
+
+
+@dataclass(frozen=True)
+class Curves:
+    """One signal along time over all starts: times (T,) [ps], even and odd (starts, T)."""
+
+    times: np.ndarray
+    even: np.ndarray | None
+    odd: np.ndarray
+    unit: str
+
+
+def beam(pulses):
+    """(3,) k̂ of the first exposed pulse, of the first pulse if none is exposed."""
+    return np.array((exposed(pulses) or pulses)[0].direction, float)
+
+
+def end_of_light(pulses):
+    """When the last exposed pulse has fallen below 1e-4 of its peak. [ps]"""
+    return max(pulse.span()[1] for pulse in (exposed(pulses) or pulses))
+
+
+def signal_of(trajectory, signal, k):
+    """(T,) one signal of one trajectory, per body."""
+    bodies = len(trajectory.mass)
+    if signal == "light_impulse":
+        return np.asarray(trajectory["light_impulse"]) @ k / HBAR / bodies
+    if signal == "angular_momentum":
+        return np.asarray(trajectory["total_angular_momentum"]) @ k / HBAR / bodies
+    return np.asarray(trajectory["alignment"], float)
+
+
+def collect(run, exposures, read):
+    """Kind -> (starts, T): `read(trajectory)` after the mean over carrier phases.
+
+    Only starts of which every exposure is complete count, so that twins stay paired.
+    """
+    names = [(e.kind, e.start, e.phase) for e in exposures]
+    there = {key for key in names if key in run and run[key].complete}
+    whole = sorted({s for _, s, _ in names} - {key[1] for key in set(names) - there})
+    rows = {}
+    for kind in dict.fromkeys(e.kind for e in exposures):
+        rows[kind] = np.array([
+            np.mean([read(run[key]) for key in names if key[:2] == (kind, start)], axis=0)
+            for start in whole
+        ])
+    return rows
+
+
+def curves(run, exposures, pulses):
+    """Signal -> Curves; empty without both lit kinds or without a complete start."""
+    kinds = {e.kind for e in exposures}
+    if not {"plus", "minus"} <= kinds:
+        return {}
+    k, found = beam(pulses), {}
+    for signal, unit in SIGNALS.items():
+        rows = collect(run, exposures, lambda t, s=signal: signal_of(t, s, k))
+        if not len(rows["plus"]):
+            return {}
+        first = run[exposures[0].kind, exposures[0].start, exposures[0].phase]
+        times = first["light_impulse"].times
+        found[signal] = Curves(times, *even_odd(rows["plus"], rows["minus"], rows.get("dark")), unit)
+    return found
+
+
+def at_the_end_of_light(found, pulses):
+    """Signal -> {odd, even: {value, error, p, interval, starts, unit, at}} of `curves`."""
+    if not found:
+        return {}
+    times = next(iter(found.values())).times
+    row = min(int(np.searchsorted(times, end_of_light(pulses) - 1e-9)), len(times) - 1)
+    return {
+        signal: {
+            part: _figures(values[:, row], curve.unit, float(times[row]))
+            for part, values in (("odd", curve.odd), ("even", curve.even)) if values is not None
+        }
+        for signal, curve in found.items()
+    }
+
+
+def _figures(values, unit, at):
+    mean, error, p = mean_and_error(values)
+    return {
+        "value": float(mean), "error": float(error), "p": float(p),
+        "half_width_95": float(half_width(error, len(values))),
+        "starts": len(values), "unit": unit, "at": {"value": at, "unit": "ps"},
+    }
+
+
+def verdict(figures):
+    """What one odd or even part says, in words."""
+    if figures["starts"] < 2:
+        return "one start only: no error, no statement"
+    if figures["value"] == 0.0 and figures["error"] == 0.0:
+        return "no response: the twins are identical"
+    if figures["p"] < CLEAR:
+        return "clear detection"
+    return "a hint; more starts would settle it" if figures["p"] < HINT else "not told from zero"
