@@ -265,7 +265,8 @@ def _scale(unit):
 def _similar(symbol):
     if symbol in ("degC", "C°", "celsius"):
         return "; temperatures are in K"
-    same = [s for s in sorted(SYMBOLS) if s.lower() == symbol.lower()]
+    # Of ps and Ps the small one is meant.
+    same = sorted((s for s in SYMBOLS if s.lower() == symbol.lower()), reverse=True)
     near = same or difflib.get_close_matches(symbol, sorted(SYMBOLS), n=1, cutoff=0.75)
     return f'; did you mean "{near[0]}"?' if near else ""
 
@@ -288,6 +289,8 @@ def _registry():
 
 def _number_text(value, kind):
     """The number before the shown unit: the fewest digits that read back as this float."""
+    if value == 0.0:
+        return "0"
     with decimal.localcontext(_EXACT):
         exact = Decimal(value) / _route(kind, kind.shown)(Decimal(1))
     for digits in range(1, 18):

@@ -75,12 +75,12 @@ class Document:
         Raises ConfigError.
         """
         key, equals, value = assignment.partition("=")
-        origin = f"--set {printable(key.strip())}"
+        origin = "--set"
         path = _parse_path(key.strip())
         if not equals or path is None:
             raise ConfigError(f'--set {printable(assignment)}: needs KEY=VALUE, for example '
                               '--set light[0].duration="120 fs"')
-        read = read_text(value, origin)
+        read = read_text(value, f"--set {printable(key.strip())}")
         target = self._section(path, origin)
         target[path[-1]] = read.tree
         inside = [known for known in self.places if known[: len(path)] == path]
@@ -154,6 +154,22 @@ def read_text(text, name):
     return document
 
 
+def yaml_text(tree):
+    """Plain values as YAML text that `read_text` reads back as the same values."""
+    return yaml.dump(tree, Dumper=_Dumper, sort_keys=False, allow_unicode=True, width=90)
+
+
+class _Dumper(yaml.SafeDumper):
+    """Quotes text that would read as a number here, though not in YAML 1.1 (1e5, 08)."""
+
+    def represent_text(self, text):
+        quoted = text in _WORDS or _DECIMAL.fullmatch(text)
+        return self.represent_scalar("tag:yaml.org,2002:str", text, style='"' if quoted else None)
+
+
+_Dumper.add_representer(str, _Dumper.represent_text)
+
+
 def path_text(path):
     """A key path as users write it: ``light[0].duration``."""
     parts = (f"[{step}]" if isinstance(step, int) else f".{printable(str(step))}" for step in path)
@@ -190,9 +206,9 @@ class _Builder:
         self.values = 0
 
     def refuse_at(self, line, column, message):
-        place = f"{printable(self.document.name)}:{line}:{column}"
-        if self.document.name.startswith("--set "):
-            place = self.document.name
+        place = printable(self.document.name)
+        if not place.startswith("--set "):
+            place = f"{place}:{line}:{column}"
         raise ConfigError(f"{place}: {message}") from None
 
     def refuse(self, mark, message):

@@ -2,7 +2,7 @@
 
 import typing
 
-from pydantic import BaseModel, ConfigDict, ValidationError
+from pydantic import BaseModel, ConfigDict, ValidationError, model_validator
 
 from swirlight.config.reader import path_text, shown
 from swirlight.config.values import Problems, Value, did_you_mean
@@ -13,6 +13,15 @@ class Section(BaseModel):
     """Base of every section: a misspelt key stops the run, nothing is changed afterwards."""
 
     model_config = ConfigDict(extra="forbid", frozen=True, validate_default=True)
+
+    @model_validator(mode="before")
+    @classmethod
+    def _empty_is_left_out(cls, tree):
+        """A key with nothing after it counts as left out."""
+        if not isinstance(tree, dict):
+            return tree
+        known = _fields(cls)
+        return {k: v for k, v in tree.items() if v is not None or k not in known}
 
     def fill(self, **values):
         """Write out defaults that follow from other keys; only for validators of a section."""

@@ -78,7 +78,7 @@ class Quantity(Value):
     low: str | None = None
     high: str | None = None
     example: str | None = None
-    words: dict = field(default_factory=dict)
+    words: dict = field(default_factory=dict, hash=False)
 
     def expected(self):
         kind = units.KINDS[self.kind]
@@ -174,7 +174,7 @@ class Number(Value):
     low: float
     high: float
     example: float
-    words: dict = field(default_factory=dict)
+    words: dict = field(default_factory=dict, hash=False)
 
     def expected(self):
         words = "".join(f"{word} or " for word in self.words)

@@ -1,0 +1,161 @@
+"""The launch config: its sections, and the rules between them."""
+
+import math
+import pathlib
+from typing import Annotated
+
+from pydantic import Field, PrivateAttr, field_validator, model_validator
+
+from swirlight.config.light import BiasField, Pulse
+from swirlight.config.sections import Exposures, Forces, Record, Sample, Stage
+from swirlight.config.validate import Section, plain
+from swirlight.config.values import Count, Problems, Text, is_path
+
+
+class Config(Section):
+    """A launch config. Attributes are called as the keys; values are in internal units.
+
+    Carriers are angular frequencies [rad/ps], angles in rad, intensities in W/cm², fluences in
+    J/cm². Defaults that follow from other keys are filled in: centres of pulses, names and
+    timesteps of stages, the length that `after_light` asks for.
+    """
+
+    title: Annotated[str, Text("Spinning up a chilled polar solvent")] = "untitled"
+    seed: Annotated[int, Count(0, 2**63 - 1, 41)] = 41
+    author: Annotated[str, Text("A. Person")] = "not given"
+    sample: Sample
+    forces: Forces = Field(default_factory=dict, validate_default=True)
+    light: tuple[Pulse, ...] | None = ()
+    bias_field: BiasField | None = None
+    stages: tuple[Stage, ...]
+    exposures: Exposures | None = None
+    record: Record = Field(default_factory=dict, validate_default=True)
+    output: Annotated[str, Text("runs/first", longest=1000)] = "runs/untitled"
+
+    _path: pathlib.Path | None = PrivateAttr(None)
+    _text: str = PrivateAttr("")
+
+    @property
+    def path(self):
+        """The file the config was read from; None if it came from text."""
+        return self._path
+
+    @property
+    def folder(self):
+        """The folder of that file."""
+        return self._path.parent if self._path else pathlib.Path(".")
+
+    @property
+    def text(self):
+        """The file verbatim, without overrides."""
+        return self._text
+
+    def resolved(self):
+        """The config as plain YAML values, every default written out, paths absolute.
+
+        Reading it again gives an equal Config.
+        """
+        return plain(self)
+
+    def __eq__(self, other):
+        return isinstance(other, Config) and self.resolved() == other.resolved()
+
+    __hash__ = None
+
+    @field_validator("stages")
+    @classmethod
+    def _fill_stages(cls, stages):
+        """Names, and timesteps of stages that take the one before."""
+        if not stages:
+            raise Problems(((), "a list of 0; expected at least one stage, for example "
+                                "{length: 10 ps, timestep: 2 fs}"))
+        timestep, names = None, []
+        for number, stage in enumerate(stages, start=1):
+            timestep = stage.timestep or timestep
+            if timestep is None:
+                raise Problems(((0, "timestep"), 'missing; expected a time, for example "2 fs"'))
+            name = stage.name or f"stage-{number}"
+            if name in names:
+                raise Problems(((number - 1, "name"), f"there are two stages {name}; expected "
+                                                      "different names"))
+            names.append(name)
+            stage.fill(timestep=timestep, name=name)
+        return stages
+
+    @model_validator(mode="after")
+    def _agree(self):
+        if self.light is None:
+            self.fill(light=())
+        problems = [*self._lit_stage()]
+        if not problems:
+            self._length_after_light()
+            problems = [*self._whole_steps(), *self._exposed(), *self._pair_names()]
+        if problems:
+            raise Problems(*problems)
+        return self
+
+    def _lit_stage(self):
+        """With light the last stage is lit, and no other; without light none is."""
+        last = len(self.stages) - 1
+        for i, stage in enumerate(self.stages):
+            if stage.lit and not self.light:
+                yield ("stages", i, "lit"), "true, but there is no light; remove it, or give light"
+            elif stage.lit and i < last:
+                yield ("stages", i, "lit"), "only the last stage can be lit; expected lit: true " \
+                                            "there and nowhere else"
+        if self.light and not any(stage.lit for stage in self.stages):
+            yield ("stages", last), "there is light, but no stage is lit; expected lit: true in " \
+                                    "the last stage"
+
+    def _length_after_light(self):
+        """Turn `after_light` into the length, rounded up to whole steps."""
+        stage = self.stages[-1]
+        if stage.after_light is not None:
+            wanted = max(0.0, *(pulse.end for pulse in self.light)) + stage.after_light
+            steps = max(1, math.ceil(wanted / stage.timestep - 1e-6))
+            # As few digits as the timestep has: what is printed reads back as the same number.
+            length = float(f"{steps * stage.timestep:.12g}")
+            stage.fill(length=length, after_light=None)
+
+    def _whole_steps(self):
+        """Every length and stride is a whole multiple of the timestep it is counted in."""
+        *unlit, recorded = self.stages if self.stages[-1].lit else (*self.stages, self.stages[-1])
+        for i, stage in enumerate(self.stages):
+            yield from _multiple(("stages", i, "length"), stage.length, stage)
+            yield from _multiple(("record", "totals_every"), self.record.totals_every, stage)
+        yield from _multiple(("record", "every"), self.record.every, recorded)
+        if self.exposures and self.exposures.spacing and unlit:
+            yield from _multiple(("exposures", "spacing"), self.exposures.spacing, unlit[-1])
+
+    def _exposed(self):
+        if self.exposures is None:
+            return
+        lit_kinds = [kind for kind in self.exposures.kinds if kind != "dark"]
+        if lit_kinds and not self.light:
+            yield ("exposures", "kinds"), f"{' and '.join(lit_kinds)} without light; expected " \
+                                          "light, or kinds: [dark]"
+        if self.exposures.starts > 1 and len(self.stages) < 2:
+            yield ("exposures", "starts"), f"{self.exposures.starts} starts need a stage before " \
+                "the last, which is continued from one start to the next; expected such a stage, " \
+                "or starts: 1"
+
+    def _pair_names(self):
+        """Species that pair overrides name are in the sample (files tell their names later)."""
+        names = [entry.use for entry in self.sample.species]
+        if any(is_path(name) for name in names):
+            return
+        for i, pair in enumerate(self.forces.pairs):
+            for j, (species, _) in enumerate(pair.sites):
+                if species not in names:
+                    yield ("forces", "pairs", i, "between", j), f"{species} is not in the " \
+                        f"sample; expected a site of {' or '.join(names)}"
+
+
+def _multiple(path, length, stage):
+    """A problem, if this is not a whole multiple of the stage's timestep."""
+    ratio = length / stage.timestep
+    if abs(ratio - round(ratio)) > 1e-6 or round(ratio) < 1:
+        below = max(1, math.floor(ratio)) * stage.timestep
+        yield path, f"{length:.9g} ps is no whole multiple of the timestep of stage " \
+                    f"{stage.name}, {stage.timestep:.9g} ps; expected one, for example " \
+                    f'"{below:.9g} ps"'
