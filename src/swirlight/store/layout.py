@@ -46,8 +46,6 @@ class Element:
     every : steps between frames; the first frame is at the first step.
     attributes : numbers and texts stored beside `unit` (`per`, `frame`, `note`).
     dimensions : names of the axes of a frame; left out: from the group and the shape.
-    first_step, first_time, timestep : where they differ from the header's, e.g. for the
-        totals of one stage of several.
     """
 
     name: str
@@ -58,9 +56,6 @@ class Element:
     every: int
     attributes: dict = field(default_factory=dict)
     dimensions: tuple = ()
-    first_step: int | None = None
-    first_time: float | None = None
-    timestep: float | None = None
 
     def __post_init__(self):
         if self.group not in ("particles", "observables"):
@@ -128,14 +123,6 @@ class Header:
         for name in WITH_POSITION:
             if name in strides and strides[name] != strides.get("position"):
                 raise ValueError(f"{name} must be recorded with position, at the same steps")
-
-    def clock(self, element):
-        """First step, first time [ps] and timestep [ps] of an element."""
-        return (
-            self.first_step if element.first_step is None else element.first_step,
-            self.first_time if element.first_time is None else element.first_time,
-            self.timestep if element.timestep is None else element.timestep,
-        )
 
 
 def is_unit(text):
@@ -267,11 +254,11 @@ def _write_element(file, header, element, first_row, rows, final):
         position = file[f"{BODIES}/position"]
         group["step"], group["time"] = position["step"], position["time"]
         return value
-    first_step, first_time, timestep = header.clock(element)
+    before = first_row * element.every  # steps
     step = group.create_dataset("step", data=np.int64(element.every))
-    step.attrs["offset"] = np.int64(first_step + first_row * element.every)
-    time = group.create_dataset("time", data=element.every * timestep)
-    time.attrs["offset"] = first_time + first_row * element.every * timestep
+    step.attrs["offset"] = np.int64(header.first_step + before)
+    time = group.create_dataset("time", data=element.every * header.timestep)
+    time.attrs["offset"] = header.first_time + before * header.timestep
     write_text_attribute(time, "unit", "ps")
     return value
 

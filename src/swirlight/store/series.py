@@ -120,4 +120,5 @@ def _cover(key, length, axis):
     if index.min() < 0 or index.max() >= length:
         raise IndexError(f"axis {axis}: index {key} is outside of {length}")
     first = int(index.min())
-    return slice(first, int(index.max()) + 1, 1), index - first if index.ndim else int(index - first)
+    within = index - first if index.ndim else 0
+    return slice(first, int(index.max()) + 1, 1), within

@@ -85,6 +85,14 @@ class Trajectory:
         """Names of everything that was recorded."""
         return tuple(self._elements)
 
+    @property
+    def readable(self):
+        """Names of everything that was recorded or follows from it."""
+        derived = [name for name in AXES if {"axes", "orientation"} & set(self._elements)]
+        if {"position", "image"} <= set(self._elements):
+            derived.append("position_unwrapped")
+        return (*self.names, *derived)
+
     def __contains__(self, name):
         return name in self._elements
 
@@ -113,7 +121,7 @@ class Trajectory:
             raise AttributeError(error.args[0]) from None
 
     def __dir__(self):
-        return [*super().__dir__(), *(n.replace("/", "_") for n in self._elements), *AXES]
+        return [*super().__dir__(), *(n.replace("/", "_") for n in self.readable)]
 
     def __repr__(self):
         state = "complete" if self.complete else "under way"

@@ -140,10 +140,9 @@ class TrajectoryWriter:
             self._seal()
         for name, value in values.items():
             element, row = self._elements[name], self._rows[name]
-            first_step = self.header.clock(element)[0]
-            if step != first_step + row * element.every:
-                raise ValueError(f"{name} is due at step {first_step + row * element.every},"
-                                 f" not at {step}")
+            due = self.header.first_step + row * element.every
+            if step != due:
+                raise ValueError(f"{name} is due at step {due}, not at {step}")
             if np.shape(value) != element.shape:
                 raise ValueError(f"{name}: shape {np.shape(value)}, expected {element.shape}")
             self._buffers[name][self._pending[name]] = value
