@@ -5,11 +5,11 @@ import pytest
 from scipy import stats
 
 from swirlight.errors import InputError
+from swirlight.motion.energy import kinetic_energies
 from swirlight.motion.kernels import Workspace, mix_with_bath
 from swirlight.motion.ledger import Ledger
 from swirlight.motion.rotation import rotation_matrix, to_body
 from swirlight.motion.step import Mover
-from swirlight.motion.energy import kinetic_energies
 from swirlight.motion.thermostats import make_thermostat
 from swirlight.units import BOLTZMANN
 

@@ -6,7 +6,7 @@ import pytest
 
 from swirlight.errors import RunError
 from swirlight.motion.energy import angular_velocity, kinetic_energies, kinetic_temperature
-from swirlight.motion.kernels import NONE, Workspace, kick
+from swirlight.motion.kernels import Workspace, kick
 from swirlight.motion.ledger import Ledger
 from swirlight.motion.rotation import rotation_matrix, to_body
 from swirlight.motion.step import Mover
@@ -223,5 +223,3 @@ def test_begin_refuses_states_that_cannot_be():
     state.position = state.position[:-1]
     with pytest.raises(ValueError, match=r"state.position has shape \(13, 3\)"):
         mover.begin(state)
-    with pytest.raises(ValueError, match="not a whole number of steps"):
-        mover.begin(thermal(bodies), time=0.0031)

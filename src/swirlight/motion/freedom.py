@@ -27,13 +27,13 @@ def degrees_of_freedom(system, momentum_conserved):
     return Freedom(translation, int(system.freedom.sum()))
 
 
-def conserves_momentum(system, thermostat, fields_act_on_charges):
+def conserves_momentum(system, thermostat, light):
     """Whether a stage keeps the total momentum of the box.
 
     thermostat : None or a thermostat with `conserves_momentum`.
-    fields_act_on_charges : a resolved or static field acts in the stage.
+    light : None, or fields that push a box with a net charge.
     """
-    pushed = fields_act_on_charges and abs(float(system.charge.sum())) > NEUTRAL
+    pushed = light is not None and abs(float(system.charge.sum())) > NEUTRAL
     return not pushed and (thermostat is None or thermostat.conserves_momentum)
 
 

@@ -167,7 +167,12 @@ def _drift_chunk(chunk, chunks, position, velocity, orientation, spin, kinds, in
     for i in range(start, end):
         for k in range(3):
             position[i, k] += t * velocity[i, k]
-        turn_freely(i, kinds[i], orientation, spin, inverse_inertia, t)
+        w, x, y, z = turn_freely(
+            kinds[i],
+            orientation[i, 0], orientation[i, 1], orientation[i, 2], orientation[i, 3],
+            spin[i, 0], spin[i, 1], spin[i, 2],
+            inverse_inertia[i, 0], inverse_inertia[i, 1], inverse_inertia[i, 2], t)
+        orientation[i, 0], orientation[i, 1], orientation[i, 2], orientation[i, 3] = w, x, y, z
 
 
 @kernel

@@ -77,13 +77,13 @@ def cosine_and_sinc(h2):
     """cos h and sin h / h of h = √h2; Taylor sums to rounding below h = 1/4.
 
     In a liquid a body turns by a few hundredths of a radian a step, and a sum of a dozen
-    terms costs a fifth of the two library calls.
+    terms costs a fraction of the two library calls.
     """
     if h2 < 0.0625:
-        c = 1.0 - h2 / 2.0 * (1.0 - h2 / 12.0 * (1.0 - h2 / 30.0 * (1.0 - h2 / 56.0 * (
-            1.0 - h2 / 90.0 * (1.0 - h2 / 132.0)))))
-        s = 1.0 - h2 / 6.0 * (1.0 - h2 / 20.0 * (1.0 - h2 / 42.0 * (1.0 - h2 / 72.0 * (
-            1.0 - h2 / 110.0))))
+        c = 1.0 + h2 * (-1 / 2 + h2 * (1 / 24 + h2 * (-1 / 720 + h2 * (1 / 40320 + h2 * (
+            -1 / 3628800 + h2 / 479001600)))))
+        s = 1.0 + h2 * (-1 / 6 + h2 * (1 / 120 + h2 * (-1 / 5040 + h2 * (1 / 362880 + h2 * (
+            -1 / 39916800)))))
         return c, s
     h = math.sqrt(h2)
     return math.cos(h), math.sin(h) / h

@@ -61,54 +61,47 @@ def turn_symmetric(w, x, y, z, lx, ly, lz, across, along, t):
 
 
 @kernel
+def _about(w, a, b, c, lb, lc, half):
+    """Turn by the angle 2 half about body axis a, where a, b, c are the axes in cyclic order.
+
+    The body turns one way and its L, seen from the body, the other.
+    """
+    cosine, sine = cosine_and_sinc(half * half)
+    sine *= half
+    turned = (cosine * w - sine * a, cosine * a + sine * w, cosine * b + sine * c,
+              cosine * c - sine * b)
+    cosine, sine = cosine * cosine - sine * sine, 2.0 * cosine * sine
+    return (*turned, cosine * lb + sine * lc, cosine * lc - sine * lb)
+
+
+@kernel
 def turn_asymmetric(w, x, y, z, lx, ly, lz, px, py, pz, t):
     """Quaternion after the five rotations; p are the reciprocal principal moments."""
     r00, r01, r02, r10, r11, r12, r20, r21, r22 = matrix_entries(w, x, y, z)
     bx = r00 * lx + r10 * ly + r20 * lz
     by = r01 * lx + r11 * ly + r21 * lz
     bz = r02 * lx + r12 * ly + r22 * lz
-    # Each rotation turns the body by φ about its axis, and L seen from the body by −φ.
-    for stage in range(5):
-        if stage == 0 or stage == 4:
-            h = 0.25 * t * px * bx
-            c, s = cosine_and_sinc(h * h)
-            s *= h
-            w, x, y, z = c * w - s * x, c * x + s * w, c * y + s * z, c * z - s * y
-            c, s = c * c - s * s, 2.0 * c * s
-            by, bz = c * by + s * bz, c * bz - s * by
-        elif stage == 2:
-            h = 0.5 * t * pz * bz
-            c, s = cosine_and_sinc(h * h)
-            s *= h
-            w, x, y, z = c * w - s * z, c * x + s * y, c * y - s * x, c * z + s * w
-            c, s = c * c - s * s, 2.0 * c * s
-            bx, by = c * bx + s * by, c * by - s * bx
-        else:
-            h = 0.25 * t * py * by
-            c, s = cosine_and_sinc(h * h)
-            s *= h
-            w, x, y, z = c * w - s * y, c * x - s * z, c * y + s * w, c * z + s * x
-            c, s = c * c - s * s, 2.0 * c * s
-            bz, bx = c * bz + s * bx, c * bx - s * bz
+    h = 0.25 * t
+    w, x, y, z, by, bz = _about(w, x, y, z, by, bz, h * px * bx)
+    w, y, z, x, bz, bx = _about(w, y, z, x, bz, bx, h * py * by)
+    w, z, x, y, bx, by = _about(w, z, x, y, bx, by, 2.0 * h * pz * bz)
+    w, y, z, x, bz, bx = _about(w, y, z, x, bz, bx, h * py * by)
+    w, x, y, z, by, bz = _about(w, x, y, z, by, bz, h * px * bx)
     return w, x, y, z
 
 
 @kernel
-def turn_freely(i, kind, orientation, angular_momentum, inverse_inertia, t):
-    """Turn body i for the time t, in place; its L is only read.
+def turn_freely(kind, w, x, y, z, lx, ly, lz, px, py, pz, t):
+    """Quaternion of a body of the given kind after free rotation for the time t.
 
-    The length of the quaternion is corrected to first order in its error, which is of
-    rounding size: an even function of the error, so time reversal holds to rounding.
+    p are the reciprocal principal moments. The length is corrected to first order in its
+    error, which is of rounding size; time reversal holds to rounding.
     """
     if kind == 0:
-        return
-    w, x, y, z = orientation[i, 0], orientation[i, 1], orientation[i, 2], orientation[i, 3]
-    lx, ly, lz = angular_momentum[i, 0], angular_momentum[i, 1], angular_momentum[i, 2]
-    px, py, pz = inverse_inertia[i, 0], inverse_inertia[i, 1], inverse_inertia[i, 2]
+        return w, x, y, z
     if kind == 1:
         w, x, y, z = turn_symmetric(w, x, y, z, lx, ly, lz, 0.5 * (px + py), pz, t)
     else:
         w, x, y, z = turn_asymmetric(w, x, y, z, lx, ly, lz, px, py, pz, t)
     f = 1.5 - 0.5 * (w * w + x * x + y * y + z * z)
-    orientation[i, 0], orientation[i, 1] = f * w, f * x
-    orientation[i, 2], orientation[i, 3] = f * y, f * z
+    return f * w, f * x, f * y, f * z

@@ -46,28 +46,31 @@ class Mover:
         self.light = light if light is not None and light.active else None
         self.timestep = float(timestep)
         self.momentum_conserved = remove_momentum and conserves_momentum(
-            system, thermostat, self.light is not None)
+            system, thermostat, self.light)
         self.freedom = degrees_of_freedom(system, self.momentum_conserved)
         self.ledger = Ledger()
         self.load = Load(system.bodies)
+        self._light_load = self.light and self.light.new_load()
         self._kinds = rotor_kinds(system.inertia)
         self._work = Workspace(system.bodies)
-        self._count = 0  # steps since the stage began
-        self._block, self._block_start = None, -1
+        self._count, self._offset = 0, 0.0  # time since the stage began: whole steps and a rest
+        self._block = None  # fields of the present BLOCK steps
 
     def begin(self, state, time=0.0, energies=True):
         """Find what acts at a state, without motion.
 
-        time : since the stage began, a whole number of steps. [ps] At 0 the total momentum is
-            removed from the state where the stage conserves it.
-        Raises ValueError for arrays of a wrong shape, a time between steps, or angular
-        momentum that a body cannot have.
+        time : since the stage began. [ps] At 0 the total momentum is removed from the state
+            where the stage conserves it.
+        Raises ValueError for arrays of a wrong shape, or angular momentum that a body cannot
+        have.
         """
         self._count = round(time / self.timestep)
-        if abs(self._count * self.timestep - time) > 1e-6 * self.timestep:
-            raise ValueError(f"{time} ps is not a whole number of steps of {self.timestep} ps")
+        self._offset = time - self._count * self.timestep
+        if abs(self._offset) < 1e-6 * self.timestep:
+            self._offset = 0.0  # a whole number of steps: the time an unbroken run would have
+        self._block = None
         _check(self.system, state)
-        if self._count == 0 and self.momentum_conserved:
+        if time == 0 and self.momentum_conserved:
             remove_total_momentum(self.system, state)
         self._evaluate(state, energies)
         if energies and np.isnan(self.ledger.opening_energy):
@@ -98,6 +101,13 @@ class Mover:
         """
         return sum(kinetic_energies(self.system, state)) + self.load.energy
 
+    def field_at_present(self, name):
+        """A row of the present FieldBlock: amplitude, conjugate_product, field or bias.
+
+        None without light and bias field.
+        """
+        return None if self.light is None else getattr(self._block, name)[self._count % BLOCK]
+
     def energy_residual(self, state):
         """ΔH0 since the ledger was opened, less all work entered there. [u nm²/ps²]"""
         return self.total_energy(state) - self.ledger.opening_energy - self.ledger.work
@@ -115,18 +125,22 @@ class Mover:
             raise RunError(_what_broke(self.system, state, load, int(broken)))
 
     def _evaluate(self, state, energies):
-        load = self.load
-        load.time = self._count * self.timestep
+        self.load = load = Load(self.system.bodies, self._time())
         if self.force_field is not None:
-            load.pair = self.force_field.evaluate(
+            load.field = self.force_field.evaluate(
                 state.position, state.orientation, state.box, energies)
         if self.light is not None:
             index = self._count % BLOCK
-            if self._block_start != self._count - index:
-                self._block_start = self._count - index
-                self._block = self.light.schedule(
-                    (self._block_start + np.arange(BLOCK)) * self.timestep)
-            self.light.apply(self._block, index, state.orientation, load.light)
+            if self._block is None or index == 0:
+                steps = self._count - index + np.arange(BLOCK)
+                self._block = self.light.schedule(self._offset + steps * self.timestep)
+            self.light.apply(self._block, index, state.orientation, self._light_load)
+            load.light = self._light_load
+            load.sum_light = lambda: self.light.energies(
+                self._block, index, state.orientation, state.position)
+
+    def _time(self):
+        return self._offset + self._count * self.timestep
 
 
 def _check(system, state):
@@ -169,5 +183,5 @@ def _what_broke(system, state, load, body):
     found = [what for what, rows in parts.items()
              if len(rows) and not np.isfinite(rows[body]).all()]
     return (f"step {state.step}: the {found[0] if found else 'angular momentum'} of body {body}"
-            f" ({_name(system, body)}) is no longer a finite number; a shorter timestep or a gentler start"
-            " may help")
+            f" ({_name(system, body)}) is no longer a finite number; a shorter timestep or a"
+            " gentler start may help")

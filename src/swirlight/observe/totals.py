@@ -1,0 +1,200 @@
+"""Totals of the whole box that are recorded: name, shape, unit in the file, and how to read.
+
+Each reads a Mover and its state at a step whose energies were asked for; values leave in the
+unit of the file. Sums over bodies carry `per: box`. One entry here makes a new total.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from swirlight import units
+from swirlight.motion.energy import kinetic_energies, kinetic_temperature
+from swirlight.observe.vectors import permanent_dipole
+
+KJ = 1.0 / units.KJ_PER_MOL
+VOLTS = 1.0 / units.VOLT_PER_METRE
+CHARGE_LENGTH = 1.0 / units.COULOMB_METRE
+SPIN = "g mol-1 nm+2 ps-1"
+BOX = {"per": "box"}
+
+
+@dataclass(frozen=True)
+class Instant:
+    """One step as the totals see it; what several of them need is worked out once."""
+
+    mover: object
+    state: object
+    kinetic: tuple[float, float]  # translation, rotation [u nm²/ps²]
+    light: object  # LightEnergies, or None without light
+
+    @classmethod
+    def of(cls, mover, state):
+        """The present step of a mover."""
+        return cls(mover, state, kinetic_energies(mover.system, state), mover.load.light_sums)
+
+    @property
+    def system(self):
+        """The System that moves."""
+        return self.mover.system
+
+    @property
+    def ledger(self):
+        """The mover's Ledger."""
+        return self.mover.ledger
+
+    @property
+    def beam(self):
+        """(3,) direction of the first pulse, ẑ without any."""
+        pulses = self.mover.light.pulses if self.mover.light else ()
+        return np.asarray(pulses[0].beam if pulses else (0.0, 0.0, 1.0))
+
+
+@dataclass(frozen=True)
+class Total:
+    """One recordable total.
+
+    name : also of the element in the file.
+    read : (Instant) -> number or array of `shape`, internal units.
+    unit, factor, attributes : as of a Vector.
+    lit : whether it exists only where light or a bias field acts in the run.
+    """
+
+    name: str
+    read: Callable
+    unit: str | None
+    factor: float = 1.0
+    shape: tuple[int, ...] = ()
+    attributes: dict = field(default_factory=dict)
+    lit: bool = False
+
+
+def total_energy(now):
+    """H0 = K + U, without field energies. [u nm²/ps²]"""
+    return sum(now.kinetic) + now.mover.load.energy
+
+
+def energy_residual(now):
+    """H0 less its opening value and all work since: what the splitting leaves. [u nm²/ps²]"""
+    return total_energy(now) - now.ledger.opening_energy - now.ledger.work
+
+
+def pressure(now):
+    """p = N k T/V + W/3V with T of the translation and W the molecular virial. [u/nm/ps²]"""
+    freedom = now.mover.freedom.translation
+    temperature = kinetic_temperature(now.kinetic[0], freedom)
+    ideal = now.system.bodies * units.BOLTZMANN * temperature
+    return (ideal + now.mover.load.virial / 3.0) / np.prod(now.state.box)
+
+
+def total_dipole(now):
+    """Σ μ + Σ q X of net charges at unwrapped centres, and rectified dipoles. (3,) [e nm]"""
+    dipole = permanent_dipole(now.system, now.state.orientation).sum(axis=0)
+    dipole = dipole + now.system.charge @ now.state.position
+    return dipole if now.light is None else dipole + now.light.rectified_dipole
+
+
+def _cosines(now):
+    """cos of body z with the beam, of all bodies that have an orientation."""
+    w, x, y, z = now.state.orientation[now.system.freedom > 0].T
+    axis = 2 * (x * z + w * y), 2 * (y * z - w * x), w * w - x * x - y * y + z * z
+    return np.tensordot(now.beam, np.stack(axis), 1)
+
+
+def alignment(now):
+    """⟨P2(cos θ)⟩ of body z with the beam; NaN for atoms only. [1]"""
+    c = _cosines(now)
+    return 1.5 * np.mean(c * c) - 0.5 if len(c) else np.nan
+
+
+def orientation_along_beam(now):
+    """⟨cos θ⟩ of body z with the beam; NaN for atoms only. [1]"""
+    c = _cosines(now)
+    return np.mean(c) if len(c) else np.nan
+
+
+def amplitude(now):
+    """(3, 2) real and imaginary parts of 𝓔. [u nm/ps²/e]"""
+    value = now.mover.field_at_present("amplitude")
+    return np.stack([value.real, value.imag], axis=-1)
+
+
+def _temperature(part):
+    def read(now):
+        energy, freedom = {
+            "translation": (now.kinetic[0], now.mover.freedom.translation),
+            "rotation": (now.kinetic[1], now.mover.freedom.rotation),
+            "total": (sum(now.kinetic), now.mover.freedom.total),
+        }[part]
+        return kinetic_temperature(energy, freedom)
+
+    return read
+
+
+def _ledger(name):
+    return lambda now: getattr(now.ledger, name)
+
+
+def _work(name, source):
+    return Total(name, _ledger(name), "kJ mol-1", KJ, (), {**BOX, "since": "the stage began",
+                                                          "source": source})
+
+
+def _impulse(name, source):
+    return Total(name, _ledger(name), SPIN, 1.0, (3,), {**BOX, "since": "the stage began",
+                                                       "source": source})
+
+
+_ALL = (
+    Total("potential_energy", lambda n: n.mover.load.energy, "kJ mol-1", KJ, (), BOX),
+    Total("kinetic_energy_translation", lambda n: n.kinetic[0], "kJ mol-1", KJ, (), BOX),
+    Total("kinetic_energy_rotation", lambda n: n.kinetic[1], "kJ mol-1", KJ, (), BOX),
+    Total("total_energy", total_energy, "kJ mol-1", KJ, (),
+          {**BOX, "parts": "kinetic and potential, no field energy"}),
+    Total("temperature", _temperature("total"), "K"),
+    Total("temperature_translation", _temperature("translation"), "K"),
+    Total("temperature_rotation", _temperature("rotation"), "K"),
+    Total("pressure", pressure, "bar", 1.0 / units.BAR),
+    Total("total_dipole", total_dipole, "C m", CHARGE_LENGTH, (3,), BOX),
+    Total("total_angular_momentum", lambda n: n.state.angular_momentum.sum(axis=0), SPIN, 1.0,
+          (3,), {**BOX, "parts": "sum of the bodies' own, about their centres of mass"}),
+    _work("light_work", "light, mechanical"),
+    _work("bias_work", "static bias field"),
+    _work("bath_work", "thermostat"),
+    _impulse("light_impulse", "light"),
+    _impulse("pair_impulse", "interactions"),
+    _impulse("bias_impulse", "static bias field"),
+    _impulse("bath_impulse", "thermostat"),
+    Total("absorbed_energy", _ledger("absorbed_energy"), "kJ mol-1", KJ, (),
+          {**BOX, "since": "the stage began", "goes": "to electrons, not put into the bodies"}),
+    Total("energy_residual", energy_residual, "kJ mol-1", KJ, (), BOX),
+    Total("alignment", alignment, None, 1.0, (), {"of": "P2 of body z along the beam",
+                                                 "per": "body"}),
+    Total("orientation_along_beam", orientation_along_beam, None, 1.0, (),
+          {"of": "cosine of body z with the beam", "per": "body"}),
+    Total("light_energy", lambda n: n.light.light_energy, "kJ mol-1", KJ, (), BOX, lit=True),
+    Total("bias_energy", lambda n: n.light.bias_energy, "kJ mol-1", KJ, (), BOX, lit=True),
+    Total("light/amplitude", amplitude, "V m-1", VOLTS, (3, 2), {"of": "real, imaginary part"},
+          lit=True),
+    Total("light/conjugate_product", lambda n: n.mover.field_at_present("conjugate_product"),
+          "V+2 m-2", VOLTS**2, (3,), lit=True),
+    Total("light/field", lambda n: n.mover.field_at_present("field"), "V m-1", VOLTS, (3,),
+          {"of": "carrier-resolved light"}, lit=True),
+)
+TOTALS = {total.name: total for total in _ALL}
+
+
+def present(mover):
+    """The Totals that this mover can fill, in order."""
+    return tuple(t for t in _ALL if mover.light is not None or not t.lit)
+
+
+def sample(mover, state, totals=None):
+    """{name: value in the unit of the file} of the present step.
+
+    totals : those to read; None: all that the mover can fill. The energies of the step must
+    have been asked for.
+    """
+    now = Instant.of(mover, state)
+    return {t.name: np.asarray(t.read(now) * t.factor) for t in totals or present(mover)}
