@@ -28,11 +28,13 @@ class Instant:
     state: object
     kinetic: tuple[float, float]  # translation, rotation [u nm²/ps²]
     light: object  # LightEnergies, or None without light
+    beam: np.ndarray  # (3,) the axis of projections
 
     @classmethod
-    def of(cls, mover, state):
+    def of(cls, mover, state, beam=(0.0, 0.0, 1.0)):
         """The present step of a mover."""
-        return cls(mover, state, kinetic_energies(mover.system, state), mover.load.light_sums)
+        kinetic = kinetic_energies(mover.system, state)
+        return cls(mover, state, kinetic, mover.load.light_sums, np.asarray(beam, float))
 
     @property
     def system(self):
@@ -43,12 +45,6 @@ class Instant:
     def ledger(self):
         """The mover's Ledger."""
         return self.mover.ledger
-
-    @property
-    def beam(self):
-        """(3,) direction of the first pulse, ẑ without any."""
-        pulses = self.mover.light.pulses if self.mover.light else ()
-        return np.asarray(pulses[0].beam if pulses else (0.0, 0.0, 1.0))
 
 
 @dataclass(frozen=True)
@@ -190,11 +186,11 @@ def present(mover):
     return tuple(t for t in _ALL if mover.light is not None or not t.lit)
 
 
-def sample(mover, state, totals=None):
+def sample(mover, state, totals=None, beam=(0.0, 0.0, 1.0)):
     """{name: value in the unit of the file} of the present step.
 
     totals : those to read; None: all that the mover can fill. The energies of the step must
-    have been asked for.
+    have been asked for. beam : (3,) axis that projections refer to, the same in every kind.
     """
-    now = Instant.of(mover, state)
+    now = Instant.of(mover, state, beam)
     return {t.name: np.asarray(t.read(now) * t.factor) for t in totals or present(mover)}

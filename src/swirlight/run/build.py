@@ -12,48 +12,9 @@ from swirlight.light.light import Light
 from swirlight.motion.draw import draw_motion, draw_orientations
 from swirlight.motion.step import Mover
 from swirlight.run.arrange import lattice_positions, remove_overlaps
-from swirlight.species.load import load_species
+from swirlight.run.sample import box_edges, build_system
 from swirlight.state import State
-from swirlight.system import Interactions, System
-
-
-def build_system(config):
-    """The System that a config describes.
-
-    Raises InputError for species that cannot be used.
-    """
-    species = tuple(load_species(s.use, folder=config.folder) for s in config.sample.species)
-    forces = config.forces
-    overrides = tuple(
-        (tuple(p.between[0].rsplit(".", 1)), tuple(p.between[1].rsplit(".", 1)), p.sigma, p.epsilon)
-        for p in forces.pairs
-    )
-    interactions = Interactions(
-        cutoff=forces.cutoff,
-        cutoff_form=forces.cutoff_form,
-        electrostatics=forces.electrostatics,
-        tolerance=forces.tolerance,
-        splitting=None if forces.splitting == "auto" else forces.splitting,
-        mesh_order=None if forces.mesh == "auto" else forces.mesh.order,
-        mesh_spacing=None if forces.mesh == "auto" else forces.mesh.spacing,
-        reaction_permittivity=(
-            np.inf if forces.reaction_permittivity == "conducting" else forces.reaction_permittivity
-        ),
-        damping=forces.damping,
-        mixing=forces.mixing,
-        overrides=overrides,
-        precision=forces.precision,
-    )
-    counts = tuple(s.count for s in config.sample.species)
-    return System(species, counts, interactions, temperature=config.sample.temperature)
-
-
-def box_edges(config, system):
-    """(3,) edges: as given, or of the cube that has the density asked for. [nm]"""
-    if config.sample.edges is not None:
-        return np.array(config.sample.edges, float)
-    volume = float(system.mass.sum()) / config.sample.density
-    return np.full(3, volume ** (1 / 3))
+from swirlight.store.start import load_state
 
 
 def lattice_start(config, system, box):
@@ -76,13 +37,11 @@ def first_state(config, system):
     Raises InputError when the box is too small or the start file holds other bodies.
     """
     if config.sample.begin_from is not None:
-        from swirlight.store.state_file import load_state
-
-        state = load_state(config.folder / config.sample.begin_from, system)
-        check_box(state.box, system)
+        state = load_state(config.sample.begin_from, system)
+        check_box(state.box, system.interactions.cutoff, system.bodies)
         return state
     box = box_edges(config, system)
-    check_box(box, system)
+    check_box(box, system.interactions.cutoff, system.bodies)
     return lattice_start(config, system, box)
 
 
@@ -132,7 +91,7 @@ class Scene:
         that is too small for the cutoff.
         """
         state = self.state
-        check_box(state.box, self.system)
+        check_box(state.box, self.system.interactions.cutoff, self.system.bodies)
         mover = Mover(self.system, ForceField(self.system, state.box), self.light, 1e-3, None)
         mover.begin(state, units.parse_quantity(time, "time"), energies=True)
         load, out = mover.load, 1.0 / units.KJ_PER_MOL

@@ -5,15 +5,15 @@ originals were edited or lost, and on another machine.
 """
 
 import pathlib
-import shutil
 
 import yaml
 
 from swirlight import __version__
 from swirlight.config import load_config
+from swirlight.config.values import is_path
 from swirlight.errors import InputError
 from swirlight.run.stop import StopFile
-from swirlight.species.load import find_species
+from swirlight.species.library import library_file
 from swirlight.store.durable import make_folder, write_bytes
 
 
@@ -87,22 +87,22 @@ def create(config, into=None):
 def _copy_inputs(config, resolved, folder):
     """Copy species files, envelope tables and a start file; point `resolved` at the copies."""
     for entry in resolved["sample"]["species"]:
-        entry["use"] = _copy(find_species(entry["use"], config.folder), folder)
+        own = is_path(entry["use"])
+        entry["use"] = _copy(entry["use"] if own else library_file(entry["use"]), folder)
     for pulse in resolved.get("light") or []:
-        if isinstance(pulse.get("envelope"), dict) and "file" in pulse["envelope"]:
-            table = config.folder / pulse["envelope"]["file"]
-            pulse["envelope"]["file"] = _copy(table, folder)
+        if pulse.get("file") is not None:
+            pulse["file"] = _copy(pulse["file"], folder)
     if resolved["sample"].get("begin_from") is not None:
-        resolved["sample"]["begin_from"] = _copy(
-            config.folder / resolved["sample"]["begin_from"], folder
-        )
+        resolved["sample"]["begin_from"] = _copy(resolved["sample"]["begin_from"], folder)
 
 
 def _copy(source, folder):
-    source = pathlib.Path(source)
-    target, count = folder.inputs / source.name, 1
-    while target.exists() and target.read_bytes() != source.read_bytes():
+    """Copy a file (a path or a packaged one) into the inputs; return the copy's relative path."""
+    source = pathlib.Path(source) if isinstance(source, str) else source
+    content, name = source.read_bytes(), pathlib.PurePath(source.name)
+    target, count = folder.inputs / name, 1
+    while target.exists() and target.read_bytes() != content:
         count += 1
-        target = folder.inputs / f"{source.stem}-{count}{source.suffix}"
-    shutil.copyfile(source, target)
+        target = folder.inputs / f"{name.stem}-{count}{name.suffix}"
+    write_bytes(target, content)
     return str(target.relative_to(folder.root))

@@ -66,15 +66,16 @@ class Trajectory:
     """What is to be done; `travel` does it.
 
     system : System.
-    legs : at least one Leg.
-    recorder : says what is recorded when (observe room); None of it knows about files.
-    header : a function (box, clock) -> store Header.
+    legs : at least one Leg; clock : their Clock.
+    recorder : Recorder, what is due when.
+    header : a function box -> store Header.
     workdir, final : where it is kept under way and when complete.
     leg_done : called with (leg index, state) as each leg ends, before anything is removed.
     """
 
     system: object
     legs: tuple
+    clock: Clock
     recorder: object
     header: object
     workdir: object
@@ -85,6 +86,11 @@ class Trajectory:
     def steps(self):
         """Steps in all."""
         return sum(leg.steps for leg in self.legs)
+
+    @property
+    def ticks(self):
+        """The same in ticks."""
+        return sum(n.steps * r for n, r in zip(self.legs, self.clock.ratio, strict=True))
 
     def travel(self, begin, stop, report=lambda facts: None):
         """Run, or go on from the newest checkpoint, until the final file is in place.
@@ -98,9 +104,8 @@ class Trajectory:
         saved = load_checkpoint(self.workdir)
         state = saved.payload["state"] if saved else begin()
         self._field = ForceField(self.system, state.box)
-        clock = Clock.of(self.legs)
-        header = self.header(state.box, clock)
-        size = segment_steps(header.elements, self._ticks(clock))
+        header = self.header(state.box)
+        size = segment_steps(header.elements, self.ticks)
         if saved:
             self._field.restore(saved.payload["field"])
             writer = TrajectoryWriter.reopen(self.workdir, header, size, saved)
@@ -113,17 +118,14 @@ class Trajectory:
         self._reported = 0.0
         try:
             for index in range(at[0], len(self.legs)):
-                self._run_leg(state, index, clock.ratio[index], at[1] if index == at[0] else 0,
-                              saved if index == at[0] else None)
+                first = index == at[0]
+                self._run_leg(state, index, at[1] if first else 0, saved if first else None)
             writer.finish(self.final)
         finally:
             writer.close()
         return state
 
-    def _ticks(self, clock):
-        return sum(leg.steps * ratio for leg, ratio in zip(self.legs, clock.ratio, strict=True))
-
-    def _run_leg(self, state, index, ratio, done, saved):
+    def _run_leg(self, state, index, done, saved):
         leg, recorder, writer = self.legs[index], self.recorder, self._writer
         mover = Mover(
             self.system, self._field, Light(self.system, leg.pulses, leg.bias), leg.timestep,
@@ -137,7 +139,7 @@ class Trajectory:
             writer.append(0, recorder.frames(0, state, mover))
         started, before = time.monotonic(), done
         for step in range(done + 1, leg.steps + 1):
-            self._tick += ratio
+            self._tick += self.clock.ratio[index]
             mover.advance(state, energies=energies(self._tick) or step == leg.steps)
             due = recorder.frames(self._tick, state, mover)
             if due:

@@ -1,0 +1,65 @@
+"""What a finished run says, in a few lines for people."""
+
+import pathlib
+
+from swirlight.errors import InputError
+from swirlight.run.response import verdict
+from swirlight.store.run import read_json
+
+NAMES = {
+    "light_impulse": "light impulse",
+    "angular_momentum": "angular momentum",
+    "alignment": "alignment ⟨P2⟩",
+}
+
+
+def answer(folder):
+    """Where the results are and what they say.
+
+    folder : of a finished run. Raises InputError when it has no summary.
+    """
+    folder = pathlib.Path(folder)
+    summary = read_json(folder / "summary.json")
+    if summary is None:
+        raise InputError(f"{folder}: has no summary.json yet; `swirlight status {folder}`")
+    lines = [f"{summary['title']}", f"results in {folder}/"]
+    if (folder / "response.png").is_file():
+        lines.append(f"picture    {folder / 'response.png'}")
+    lines += _response(summary["response"]) or _averages(summary["averages"])
+    heating = summary["heating"]
+    if heating:
+        own = heating["own_temperature"]
+        lines.append(f"heating by the end: {own['value']:+.2f} ± {_number(own['error'])} K (own"
+                     " thermometer, lit less dark),"
+                     f" {heating['absorbed_over_heat_capacity']['value']:.3g} K (absorbed energy"
+                     " over heat capacity)")
+    return "\n".join(lines)
+
+
+def _response(response):
+    if not response:
+        return []
+    impulse = response["light_impulse"]["odd"]
+    lines = [f"at {impulse['at']['value']:.2f} ps (end of the light), {impulse['starts']} starts,"
+             " along the beam, per body, ± standard error:"]
+    for part, name in (("odd", "odd in helicity"), ("even", "even")):
+        for signal, parts in response.items():
+            if part in parts:
+                f = parts[part]
+                unit = f" {f['unit']}" if f["unit"] else ""
+                lines.append(
+                    f"  {name:<16} {NAMES[signal]:<17} {f['value']:+.3e} ±"
+                    f" {_number(f['error'])}{unit.replace('hbar', 'ħ')}"
+                    f"  (p = {_number(f['p'])}): {verdict(f)}"
+                )
+    lines.append(f"Does the pulse turn these molecules? Light impulse: {verdict(impulse)}.")
+    return lines
+
+
+def _averages(averages):
+    return [f"  {name.replace('_', ' '):<17} {f['value']:.5g} ± {_number(f['error'])} {f['unit']}"
+            for name, f in averages.items()]
+
+
+def _number(value):
+    return "unknown" if value is None or value != value else f"{value:.1e}"

@@ -1,0 +1,111 @@
+"""`swirlight check`: everything that can be said of a run before it starts.
+
+Each part is a generator of `Section` and `Notice` objects from one `Subject`; adding a part
+means one function and its name in `PARTS`. Nothing compiled is imported here.
+"""
+
+import numpy as np
+
+from swirlight.errors import InputError
+from swirlight.forces.box import check_box
+from swirlight.light.build import bias_from_config, pulses_from_config
+from swirlight.run import plan_cost, plan_light, plan_sample, plan_stages
+from swirlight.run.exposures import list_exposures
+from swirlight.run.plan_echo import echo
+from swirlight.run.plan_page import Notice, Plan, Row, Section
+from swirlight.run.plan_subject import Subject
+from swirlight.run.sample import box_edges, build_system
+
+__all__ = ["Notice", "Plan", "Row", "Section", "check_config"]
+
+PARTS = (
+    echo,
+    plan_sample.sample,
+    plan_sample.bodies,
+    plan_light.pulses,
+    plan_light.strengths,
+    plan_light.heating,
+    plan_light.bias,
+    plan_light.odd_part,
+    plan_stages.boundary,
+    plan_stages.stages,
+    plan_stages.record,
+    plan_stages.trajectories,
+    plan_cost.cost,
+)
+
+
+def check_config(config):
+    """The Plan of a validated config.
+
+    config : of `load_config`.
+    Raises InputError, naming the key, for a sample that cannot be built, a box too small for the
+    cutoff, light that a timestep cannot follow or that a species has no response for.
+    """
+    subject = examine(config)
+    sections, warnings = [], []
+    for part in PARTS:
+        for found in _under(config, part, subject):
+            (warnings if isinstance(found, Notice) else sections).append(found)
+    return Plan(config.title, tuple(sections), _once(warnings), lit=bool(subject.pulses))
+
+
+def examine(config):
+    """The Subject of a config; refuses what cannot run. Raises InputError as `check_config`."""
+    system = _named(config, "sample", build_system, config)
+    if not system.bodies:
+        raise _refusal(config, "sample.species", "no bodies; at least one count must not be 0")
+    _named(config, "forces.pairs", _pair_tables, system)
+    box = _named(config, "sample", box_edges, config, system)
+    _named(config, "forces.cutoff", check_box, box, system.interactions.cutoff, system.bodies)
+    _named(config, "forces.electrostatics", _require_neutral, system)
+    last = config.stages[-1]
+    pulses = _named(config, "light", pulses_from_config, config.light, system, last, config.folder)
+    return Subject(
+        config=config, system=system, box=np.asarray(box, float), pulses=pulses,
+        bias=bias_from_config(config.bias_field), lit=last if pulses else None,
+        lit_length=last.length if pulses else 0.0,
+        exposures=tuple(list_exposures(config, pulses)),
+    )
+
+
+def _pair_tables(system):
+    """Pair overrides name sites by the names in the species files: known only here."""
+    try:
+        return system.lennard_jones
+    except ValueError as error:
+        raise InputError(str(error)) from None
+
+
+def _require_neutral(system):
+    kind = system.interactions.electrostatics
+    charge = float(system.charge.sum())
+    if "ewald" in kind and abs(charge) > 1e-8 * max(float(np.abs(system.site_charge).sum()), 1.0):
+        raise InputError(f"{kind} needs a neutral box, and this one has {charge:.6g} e")
+
+
+def _under(config, part, subject):
+    try:
+        return list(part(subject))
+    except InputError as error:
+        raise _refusal(config, "", error) from None
+
+
+def _named(config, key, function, *arguments):
+    try:
+        return function(*arguments)
+    except InputError as error:
+        raise _refusal(config, key, error) from None
+
+
+def _refusal(config, key, reason):
+    """An InputError that begins with file and key, unless the reason names a place itself."""
+    reason = str(reason)
+    if isinstance(config.path, object) and config.path and str(config.path) in reason:
+        return InputError(reason)
+    named = reason if not key or reason.startswith(key.split(".")[0]) else f"{key}: {reason}"
+    return InputError(f"{config.path}: {named}" if config.path else named)
+
+
+def _once(notices):
+    return tuple(dict.fromkeys(notices))

@@ -1,0 +1,129 @@
+"""Parts of `check` about time: stages, baths, what a timestep and a record interval resolve."""
+
+import math
+
+import numpy as np
+
+from swirlight.light.describe import end_of_light
+from swirlight.light.regime import beats
+from swirlight.run.plan_page import Notice, Row, Section, quantity
+
+ROTATION_STEPS = 40  # timesteps in the fastest thermal rotation; librations are a few times faster
+THERMAL_BAND = 4.0  # thermal rates √(kT/I): hardly a body turns faster
+LIBRATIONS = "librations are usually several times faster than free rotation"
+
+
+def stages(subject):
+    """Each stage, and how well its timestep follows the fastest rotation."""
+    for n, stage in enumerate(subject.config.stages):
+        key, bath = f"stages[{n}]", stage.thermostat
+        rows = [
+            quantity("length", stage.length, "time"),
+            quantity("timestep", stage.timestep, "time"),
+            Row("steps", stage.steps),
+            Row("bath", "none: energy is conserved" if bath.method == "none"
+                else f"{bath.method} on {bath.acts_on}"),
+            Row("light", "on" if stage.lit else "off"),
+        ]
+        if bath.method != "none":
+            rows.append(quantity("friction", bath.friction, "rate"))
+        if math.isfinite(subject.rotation_period):
+            steps = subject.rotation_period / stage.timestep
+            rows.append(Row("steps per fastest rotation", steps, "", LIBRATIONS))
+            if steps < ROTATION_STEPS:
+                yield Notice("steps-per-rotation", f"{key}.timestep: {steps:.3g} timesteps in the"
+                             f" fastest thermal rotation; {ROTATION_STEPS} would be"
+                             f" {subject.rotation_period / ROTATION_STEPS:.3g} ps")
+        yield Section(f"{key}: {stage.name}", tuple(rows))
+        if stage.lit:
+            yield from _bath_on_rotation(key, stage, subject)
+
+
+def _bath_on_rotation(key, stage, subject):
+    bath = stage.thermostat
+    if bath.method == "none" or bath.acts_on == "translation" or not bath.friction:
+        return
+    after = max(stage.length - max(end_of_light(subject.pulses), 0.0), 0.0)
+    yield Notice("bath-on-rotation", f"{key}.thermostat: it acts on rotation while the light is"
+                 f" on and for {after:.3g} ps after: an induced spin relaxes within 1/friction ="
+                 f" {1.0 / bath.friction:.3g} ps, whatever the liquid would do")
+
+
+def record(subject):
+    """What the record intervals can show: their Nyquist frequencies against all that moves."""
+    settings = subject.config.record
+    intervals = {"totals": settings.totals_every}
+    if settings.vectors:
+        intervals = {"vectors": settings.every} | intervals
+    band = highest_rotation(subject)
+    carrier = max((p.carrier for p in subject.pulses if p.coupling == "resolved"), default=0.0)
+    beat = max((b for _, _, b, together in beats(subject.pulses, subject.system) if together),
+               default=0.0)
+    rows = [quantity("fastest rotations", band, "carrier",
+                     f"{THERMAL_BAND:g} times the thermal rate of the fastest body; {LIBRATIONS}")]
+    for name, every in intervals.items():
+        rows.append(quantity(f"{name} every", every, "time"))
+        rows.append(quantity(f"{name} show up to", math.pi / every, "carrier", "Nyquist"))
+    yield Section("record", tuple(rows))
+    for name, every in intervals.items():
+        key = "record.every" if name == "vectors" else "record.totals_every"
+        yield from _nyquist(key, name, every, band, carrier, beat)
+
+
+def highest_rotation(subject):
+    """Angular frequency above which hardly a body rotates. [rad/ps]"""
+    if not math.isfinite(subject.rotation_period):
+        return 0.0
+    return THERMAL_BAND * 2.0 * math.pi / subject.rotation_period
+
+
+def _nyquist(key, name, every, band, carrier, beat):
+    limit = math.pi / every * (1.0 + 1e-9)
+    if band > limit:
+        yield Notice("nyquist-rotation", f"{key}: every {every:.4g} ps {name} miss the fastest"
+                     f" rotations; {math.pi / band:.2g} ps would show them")
+    # torques and powers of a resolved carrier go at twice its frequency
+    for code, speed, what in (("nyquist-carrier", 2.0 * carrier, "twice the resolved carrier"),
+                              ("nyquist-beat", beat, "the beat of the averaged pulses")):
+        if speed > limit:
+            yield Notice(code, f"{key}: every {every:.4g} ps {name} miss {what}, at which torques"
+                         f" move; {math.pi / speed:.2g} ps would show it")
+
+
+def trajectories(subject):
+    """How many trajectories there are, of what kinds, and how independent their starts are."""
+    exposures, settings = subject.exposures, subject.config.exposures
+    kinds = list(dict.fromkeys(e.kind for e in exposures))
+    rows = []
+    for kind in kinds:
+        own = [e for e in exposures if e.kind == kind]
+        starts = len({e.start for e in own})
+        rows.append(Row(kind, len(own), "trajectories",
+                        f"{starts} starts × {own[0].phases} carrier phases"))
+    rows.append(Row("trajectories", len(exposures)))
+    if settings is not None and settings.starts > 1:
+        rows.append(Row("spacing", "chosen while equilibrating", "", "three times the slowest"
+                        " correlation time") if settings.spacing is None
+                    else quantity("spacing", settings.spacing, "time"))
+    yield Section("trajectories", tuple(rows))
+    if subject.pulses and len({e.start for e in exposures}) < 2:
+        yield Notice("one-start", "exposures.starts: one start gives no standard error: errors"
+                     " come from the spread over independent starts")
+    alone = {"plus", "minus"} & set(kinds)
+    if subject.pulses and settings is not None and len(alone) == 1:
+        yield Notice("no-twin", f"exposures.kinds: {alone.pop()} without its mirror image gives"
+                     " neither even nor odd response")
+
+
+def boundary(subject):
+    """What the electrostatics make of an applied field."""
+    kind = subject.system.interactions.electrostatics
+    field = subject.bias is not None or any(p.coupling == "resolved" for p in subject.pulses)
+    if not field or not np.any(subject.system.type_charge):
+        return
+    if kind == "reaction-field":
+        yield Notice("applied-field", "forces.electrostatics: with reaction-field the Maxwell"
+                     " field in the sample is (2ε_RF + 1)/(2ε_RF + ε(ω)) times the applied one")
+    elif kind == "damped-shifted":
+        yield Notice("applied-field", "forces.electrostatics: damped-shifted has no clean"
+                     " boundary: compare the response to an applied field with mesh-ewald")

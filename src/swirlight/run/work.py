@@ -1,0 +1,196 @@
+"""What a run folder asks for, as trajectories that can be travelled."""
+
+import pathlib
+from functools import cached_property
+
+import numpy as np
+
+from swirlight.errors import RunError, StopRequested
+from swirlight.light.build import bias_from_config, pulses_from_config
+from swirlight.run.build import first_state
+from swirlight.run.exposures import list_exposures
+from swirlight.run.folder import RunFolder
+from swirlight.run.header import file_header
+from swirlight.run.record import Recorder, watched_bodies
+from swirlight.run.response import beam
+from swirlight.run.sample import build_system
+from swirlight.run.spacing import SAFETY, correlation_times
+from swirlight.run.trajectory import Clock, Leg, Trajectory
+from swirlight.store.durable import remove_folder, write_json
+from swirlight.store.run import open_run
+from swirlight.store.start import load_state, save_state
+
+
+class Work:
+    """Everything that is to be calculated in one run folder.
+
+    folder : RunFolder; config, system, pulses, bias : as the folder's config says.
+    """
+
+    def __init__(self, folder):
+        self.folder = folder
+        self.config = folder.config()
+        self.system = build_system(self.config)
+        self.pulses = pulses_from_config(
+            self.config.light, self.system, self.config.stages[-1], self.config.folder
+        )
+        self.bias = bias_from_config(self.config.bias_field)
+        self.beam = beam(self.pulses) if self.pulses else np.array([0.0, 0.0, 1.0])
+        self.exposures = list_exposures(self.config, self.pulses)
+
+    @property
+    def exposure_steps(self):
+        """Steps of one exposure."""
+        return self.config.stages[-1].steps
+
+    @property
+    def starts(self):
+        """How many starts there are."""
+        return 1 + max(e.start for e in self.exposures)
+
+    def preparations(self):
+        """Yield (name, Trajectory, begin) of what must be done before the exposures."""
+        unlit = self.config.stages[:-1]
+        if not unlit:
+            if not self.folder.start(0).is_file():
+                self._save_start(0, first_state(self.config, self.system))
+            return
+        if not self.folder.equilibrium.is_file():
+            begin = lambda: first_state(self.config, self.system)  # noqa: E731
+            yield "equilibrate", self._equilibrium(unlit), begin
+        if self.starts > 1 and not self.folder.continuation.is_file():
+            yield "collect starts", self._continuation(unlit[-1]), self._chain_state
+
+    def exposure(self, name):
+        """(Trajectory, begin) of the exposure called `name`."""
+        exposure = next(e for e in self.exposures if e.name == name)
+        leg = self._leg(self.config.stages[-1], exposure.light(self.pulses), self.bias)
+        begin = lambda: load_state(self.folder.start(exposure.start), self.system)  # noqa: E731
+        about = {"kind": exposure.kind, "start": exposure.start, "phase": exposure.phase}
+        return self._trajectory(name, (leg,), True, about), begin
+
+    @cached_property
+    def spacing(self):
+        """Time from one start to the next, as asked for or as found; {value, found}. [ps]
+
+        Raises RunError when equilibration was too short to see how long memory lasts.
+        """
+        if self.config.exposures is None:
+            return {"value": 0.0, "found": {}}
+        asked = self.config.exposures.spacing
+        if asked is not None:
+            return {"value": asked, "found": {}}
+        return self._find_spacing()
+
+    def _find_spacing(self):
+        record = open_run(self.folder.root).equilibrium
+        last = self.config.stages[-2]
+        momentum, axis = record["watched/angular_momentum"], record["watched/axis_z"]
+        # only the last unlit stage, and of it the second half: the first still settles
+        keep = momentum.times >= momentum.times[-1] - 0.5 * last.length
+        bodies, found = watched_bodies(self.system), {}
+        for k, species in enumerate(self.system.species):
+            rows = np.flatnonzero(self.system.species_of[bodies] == k)
+            if len(rows):
+                times = correlation_times(
+                    np.asarray(momentum)[keep][:, rows], np.asarray(axis)[keep][:, rows],
+                    momentum.interval,
+                )
+                found[species.name] = times
+        if not found:
+            raise RunError("exposures.spacing: left out, but atoms alone have no rotation to take"
+                           " it from; give it in the config")
+        slowest = max(tau for times in found.values() for tau, _ in times.values())
+        steps = max(1, round(SAFETY * slowest / last.timestep))
+        return {
+            "value": steps * last.timestep,
+            "found": {
+                name: {what: {"value": tau, "unit": "ps", "settled": settled}
+                       for what, (tau, settled) in times.items()}
+                for name, times in found.items()
+            },
+        }
+
+    def _equilibrium(self, unlit):
+        last = len(unlit) - 1
+
+        def leg_done(index, state):
+            if index == last:
+                save_state(self._chain_file, state, self.system)
+                self._save_start(0, state)
+
+        legs = tuple(self._leg(stage, (), self._steady_bias) for stage in unlit)
+        watch = self.config.exposures is not None and self.config.exposures.spacing is None
+        return self._trajectory("equilibrium", legs, False, {"kind": "equilibrium"}, leg_done,
+                                watch)
+
+    def _continuation(self, stage):
+        def leg_done(index, state):
+            self._save_start(index + 1, state)
+
+        steps = round(self.spacing["value"] / stage.timestep)
+        leg = self._leg(stage, (), self._steady_bias, steps)
+        legs = (leg,) * (self.starts - 1)
+        return self._trajectory("continuation", legs, False, {"kind": "equilibrium"}, leg_done)
+
+    @property
+    def _chain_file(self):
+        return self.folder.work / "chain.h5"
+
+    def _chain_state(self):
+        return load_state(self._chain_file, self.system)
+
+    def _save_start(self, index, state):
+        """Save a start with noise of its own, which depends on (seed, start) alone."""
+        start = state.copy()
+        seeds = np.random.SeedSequence((self.config.seed, index))
+        start.random = np.random.Generator(np.random.PCG64(seeds))
+        save_state(self.folder.start(index), start, self.system)
+
+    @property
+    def _steady_bias(self):
+        return self.bias if self.bias is not None and self.bias.always else None
+
+    def _leg(self, stage, pulses, bias, steps=None):
+        thermostat = stage.thermostat
+        settings = {"method": thermostat.method}
+        if thermostat.method != "none":
+            settings |= {"friction": thermostat.friction, "acts_on": thermostat.acts_on}
+        return Leg(stage.name, steps or stage.steps, stage.timestep, settings, pulses, bias)
+
+    def _trajectory(self, name, legs, with_vectors, about, leg_done=lambda i, s: None,
+                    watch=False):
+        clock = Clock.of(legs)
+        lit = any(leg.pulses or leg.bias is not None for leg in legs)
+        recorder = Recorder(self.system, self.beam, self.config.record, clock, with_vectors, lit,
+                            watch)
+        return Trajectory(
+            system=self.system, legs=legs, clock=clock, recorder=recorder,
+            header=lambda box: file_header(self, legs, clock, box, recorder.elements, about),
+            workdir=self.folder.working(name), final=self.folder.final(name), leg_done=leg_done,
+        )
+
+
+_known = {}
+
+
+def expose(root, name):
+    """Carry one exposure to its end; the task of a worker process.
+
+    root : the run folder; name : of the exposure.
+    Returns {"name", "failed": reason or None}; a stop request is raised as StopRequested.
+    """
+    folder = RunFolder(root)
+    if folder.final(name).is_file():
+        remove_folder(folder.working(name))
+        return {"name": name, "failed": None}
+    if folder.stop.look():
+        raise StopRequested(0, folder.stop.look())
+    work = _known.get(root) or _known.setdefault(root, Work(folder))
+    trajectory, begin = work.exposure(name)
+    try:
+        trajectory.travel(begin, folder.stop)
+    except RunError as error:
+        write_json(pathlib.Path(folder.failure(name)), {"name": name, "reason": str(error)})
+        return {"name": name, "failed": str(error)}
+    return {"name": name, "failed": None}
