@@ -146,7 +146,9 @@ def dipole_torque(orientation, first, free, dipole, field, torque):
             r00, r01, r02, r10, r11, r12, r20, r21, r22 = _rotation(orientation[i])
             ux, uy, uz = (r00 * ex + r10 * ey + r20 * ez, r01 * ex + r11 * ey + r21 * ez,
                           r02 * ex + r12 * ey + r22 * ez)
-            tx, ty, tz = fx * (my * uz - mz * uy), fy * (mz * ux - mx * uz), fz * (mx * uy - my * ux)
+            tx = fx * (my * uz - mz * uy)
+            ty = fy * (mz * ux - mx * uz)
+            tz = fz * (mx * uy - my * ux)
             torque[i, 0] += r00 * tx + r01 * ty + r02 * tz
             torque[i, 1] += r10 * tx + r11 * ty + r12 * tz
             torque[i, 2] += r20 * tx + r21 * ty + r22 * tz
