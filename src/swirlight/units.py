@@ -25,6 +25,8 @@ from decimal import Decimal
 
 from scipy import constants as _si
 
+from swirlight.errors import InputError
+
 ATOMIC_MASS = _si.atomic_mass  # kg in 1 u
 NANOMETRE, PICOSECOND = 1e-9, 1e-12  # m, s
 JOULE = 1.0 / (ATOMIC_MASS * (NANOMETRE / PICOSECOND) ** 2)  # u nm²/ps² in 1 J
@@ -150,6 +152,15 @@ def parse_vector(text, kind, low=None, high=None):
     kind = KINDS[kind]
     numbers, unit = _split(text, VECTOR_PATTERN)
     return tuple(_between(_convert(n, unit, kind), kind, low, high) for n in numbers)
+
+
+def parse_quantity(text, kind):
+    """`parse` for callers from Python: its ValueError becomes an InputError with the text."""
+    try:
+        return parse(text, kind)
+    except ValueError as error:
+        raise InputError(f"{str(text)[:LONGEST]!r} {error}; expected {KINDS[kind]}, for example "
+                         f'"{KINDS[kind].example}"') from None
 
 
 def text(value, kind):

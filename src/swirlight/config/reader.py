@@ -160,10 +160,11 @@ def yaml_text(tree):
 
 
 class _Dumper(yaml.SafeDumper):
-    """Quotes text that would read as a number here, though not in YAML 1.1 (1e5, 08)."""
+    """Quotes text that would read as a number here, though not in YAML 1.1 (1e5, 08), and
+    text with unusual line breaks, which the plain style loses."""
 
     def represent_text(self, text):
-        quoted = text in _WORDS or _DECIMAL.fullmatch(text)
+        quoted = text in _WORDS or _DECIMAL.fullmatch(text) or not text.isprintable()
         return self.represent_scalar("tag:yaml.org,2002:str", text, style='"' if quoted else None)
 
 

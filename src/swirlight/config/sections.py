@@ -68,7 +68,7 @@ class Sample(Section):
 class Mesh(Section):
     """The mesh of the Ewald sum."""
 
-    order: Annotated[int | None, Count(3, 10, 5)] = None
+    order: Annotated[int | None, Count(4, 8, 5)] = None
     spacing: Annotated[float | None, Quantity("length", "0.01 nm", "1 nm", "0.1 nm")] = None
 
 

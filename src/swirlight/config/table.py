@@ -26,8 +26,9 @@ class Table:
 def read_table(path):
     """Read an envelope: two columns, time and relative intensity, rising times.
 
-    A first line of names may stand above them; it may give the unit of time, ``time (fs)``,
-    which is ps otherwise. Empty lines and lines that begin with # are skipped.
+    Commas or semicolons part the columns. A first line of names may stand above them; it may
+    give the unit of time, ``time (fs)``, which is ps otherwise. Empty lines and lines that
+    begin with # are skipped.
     Returns a Table. Raises Problems at the key `file`.
     """
     try:
@@ -55,7 +56,7 @@ def _problem(path, reason):
 def _columns(text):
     """The two columns, times in ps. Raises ValueError."""
     times, values, scale = [], [], 1.0
-    for number, row in enumerate(csv.reader(io.StringIO(text)), start=1):
+    for number, row in enumerate(csv.reader(io.StringIO(text.replace(";", ","))), start=1):
         cells = [cell.strip() for cell in row]
         if not any(cells) or cells[0].startswith("#"):
             continue
