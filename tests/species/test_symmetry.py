@@ -58,7 +58,7 @@ WORDS = {
     "Kh": ("xx = yy = zz", "none", "none"),
     "D∞h": ("xx = yy, zz", "along z", "none"),
     "C∞v": ("xx = yy, zz", "along z", "xy = -yx"),
-    "C2v": ("xx, yy, zz", "along x or along y or along z", "xz, zx"),
+    "C2v": ("xx, yy, zz", "along x, y or z", "xz, zx"),
     "C3v": ("xx = yy, zz", "along z", "xy = -yx"),
     "C1": ("xx, xy, xz, yy, yz, zz", "any direction", "xx, xy, xz, yx, yy, yz, zx, zy, zz"),
     "Ci": ("xx, xy, xz, yy, yz, zz", "any direction", "none"),
@@ -66,7 +66,7 @@ WORDS = {
     "C3": ("xx = yy, zz", "along z", "xx = yy, xy = -yx, zz"),
     "D2d": ("xx = yy, zz", "along z", None),  # its κ depends on which axis comes first
     "Td": ("xx = yy = zz", "none", "none"),
-    "D2": (None, "along x or along y or along z", "xx, yy, zz"),
+    "D2": (None, "along x, y or z", "xx, yy, zz"),
 }
 
 
@@ -113,7 +113,7 @@ def test_gyration_may_lie_in_one_allowed_space_but_not_across_two():
             kept, note = hold_against("gyration", sign * axis, group)
             np.testing.assert_allclose(kept, sign * axis, atol=1e-12)
             assert note == ""
-    with pytest.raises(InputError, match="gyration: component [xz] is forbidden by.*C2v.*along x"):
+    with pytest.raises(InputError, match="component [xz] is forbidden by.*C2v.*along x"):
         hold_against("gyration", np.array([1.0, 0, 0.9]), group)
     slanted = np.array([0.3, -0.2, 0.9])
     np.testing.assert_allclose(hold_against("gyration", slanted, group_of("Ci"))[0], slanted)
@@ -135,7 +135,7 @@ def test_forbidden_parts_are_refused_unless_ignored():
     group = group_of("C2v")
     tensor = np.diag([4.0, 5, 6])
     tensor[0, 1] = tensor[1, 0] = 0.2
-    with pytest.raises(InputError, match="polarizability: component xy, yx is forbidden by the "
+    with pytest.raises(InputError, match="component xy, yx is forbidden by the "
                                          "symmetry C2v.*xx, yy, zz.*symmetry: ignore"):
         hold_against("polarizability", tensor, group)
     kept, note = hold_against("polarizability", tensor, group, ignore=True)

@@ -74,13 +74,22 @@ def tensor_words(basis, axial=False):
 
     The polarizabilities (not axial) are symmetric and described by their upper half.
     """
-    shown = [k for k in range(9) if axial or k // 3 <= k % 3]
-    words = []
+    shown, words = _shown(axial), []
     for row in _reduced(basis.reshape(len(basis), 9)):
         present = [k for k in shown if abs(row[k]) > _ROUNDING]
         first = row[present[0]]
         words.append(" = ".join(_term(row[k] / first, PAIRS[k]) for k in present))
     return ", ".join(words) or "none"
+
+
+def zero_components(basis, axial=False):
+    """The components that no tensor of a basis has, such as ["xy", "xz", "yz"]."""
+    used = np.abs(basis).sum(axis=0).ravel()
+    return [PAIRS[k] for k in _shown(axial) if used[k] <= _ROUNDING]
+
+
+def _shown(axial):
+    return [k for k in range(9) if axial or k // 3 <= k % 3]
 
 
 def _term(ratio, name):
@@ -108,9 +117,12 @@ def _reduced(matrix):
 
 
 def gyration_words(spaces):
-    """Say where a gyration may point: "along z", "in the xy plane or along z", "none"."""
-    words = [_space_words(basis) for basis in spaces]
-    return " or ".join(sorted(words, key=lambda w: (w[:2] != "in", w))) or "none"
+    """Say where a gyration may point: "along x, y or z", "in the xy plane or along z", "none"."""
+    words = sorted((_space_words(basis) for basis in spaces),
+                   key=lambda word: (word.startswith("along"), word))
+    if words == ["along x", "along y", "along z"]:
+        return "along x, y or z"
+    return " or ".join(words) or "none"
 
 
 def _space_words(basis):

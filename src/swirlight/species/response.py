@@ -12,9 +12,12 @@ from swirlight.species.invariants import (
     tensor_words,
     within,
     within_nearest,
+    zero_components,
 )
 
 TYPED = 1e-4  # of a tensor's largest entry: what rounding in a typed number may amount to
+DUST = 1e-13  # of a tensor's largest entry: what rounding in arithmetic may amount to
+PARTS = ("polarizability", "absorptive_polarizability", "gyration", "rectification")
 
 
 @dataclass(frozen=True)
@@ -29,16 +32,23 @@ class Allowed:
         """The part of a body-frame tensor that is allowed; `name` as in a species file."""
         if name == "gyration":
             return within_nearest(tensor, self.gyration)
-        basis = self.rectification if name == "rectification" else self.polarizability
-        return within(tensor, basis)
+        return within(tensor, self._basis(name))
+
+    def forbidden(self, name):
+        """The components that are 0 in every allowed tensor, such as ["xy", "xz", "yz"]."""
+        if name == "gyration":
+            used = sum((np.abs(space).sum(axis=0) for space in self.gyration), np.zeros(3))
+            return [n for n, weight in zip("xyz", used, strict=True) if weight < TYPED]
+        return zero_components(self._basis(name), axial=name == "rectification")
 
     def words(self, name):
         """What is allowed, in words."""
         if name == "gyration":
             return gyration_words(self.gyration)
-        if name == "rectification":
-            return tensor_words(self.rectification, axial=True)
-        return tensor_words(self.polarizability)
+        return tensor_words(self._basis(name), axial=name == "rectification")
+
+    def _basis(self, name):
+        return self.rectification if name == "rectification" else self.polarizability
 
 
 def allowed_by(operations):
@@ -65,17 +75,23 @@ def hold_against(name, tensor, group, ignore=False):
     meaningful = held.part(name, tensor)
     if np.abs(tensor - meaningful).max() > scale:
         kind = "a linear body" if group.name in ("C∞v", "D∞h") else "an atom"
-        raise InputError(f"{name}: {_excess(tensor - meaningful)} has no meaning on {kind};"
+        raise InputError(f"{_excess(tensor - meaningful)} has no meaning on {kind};"
                          f" in the body frame it may have: {held.words(name)}")
     permitted = full.part(name, meaningful)
     if np.abs(meaningful - permitted).max() <= scale:
-        return permitted, ""
+        return _without_dust(permitted), ""
     excess = _excess(meaningful - permitted)
     if not ignore:
-        raise InputError(f"{name}: {excess} is forbidden by the symmetry {group.name} of the sites;"
+        raise InputError(f"{excess} is forbidden by the symmetry {group.name} of the sites;"
                          f" in the body frame it may have: {full.words(name)}"
                          ' (write "symmetry: ignore" to keep it)')
-    return meaningful, f"{name}: {excess} kept although {group.name} forbids it (symmetry: ignore)"
+    return _without_dust(meaningful), (f"{name}: {excess} kept although {group.name} forbids it"
+                                       " (symmetry: ignore)")
+
+
+def _without_dust(tensor):
+    """A tensor whose entries of rounding size are exactly 0."""
+    return np.where(np.abs(tensor) > DUST * np.abs(tensor).max(), tensor, 0.0)
 
 
 def _excess(forbidden):
@@ -90,5 +106,5 @@ def require_absorbing(absorptive):
     """Raise InputError unless a (3, 3) absorptive polarizability is positive semidefinite."""
     values = np.linalg.eigvalsh(absorptive)
     if values[0] < -TYPED * np.abs(values).max():
-        raise InputError("absorptive_polarizability: a principal value is negative, which would"
-                         " amplify the light; all three must be 0 or positive")
+        raise InputError("a principal value is negative, which would amplify the light;"
+                         " all three must be 0 or positive")
