@@ -19,10 +19,10 @@ VISIBLE, TOO_MANY = 0.5, 0.1  # eV a photon, photons a body and pulse: physics.m
 def strength_for(pulse, species, temperature):
     """Figures by name as (value, unit), and warnings, for one pulse and one species.
 
-    Averaged: the wells Δα|𝓔|²cos²χ/4kT (linear: Δα|𝓔|²/4kT, circular: /8kT) and |g||G|/4kT, the
-    impulses of Kerr and absorptive torques over the pulse, photons absorbed per body and pulse
-    (local field included), and the quiver polarizability μ²/(Iω²) that averaging leaves out,
-    against the mean of α_S. Resolved: μE/kT and the impulse μE/(ω√(I kT)).
+    The wells Δα|𝓔|²cos²χ/4kT (linear: Δα|𝓔|²/4kT, circular: /8kT) and |g||G|/4kT, the impulses of
+    the Kerr, gyration and absorptive torques over the pulse, photons absorbed per body and pulse
+    (local field included). Averaged: also the quiver polarizability μ²/(Iω²) that averaging
+    leaves out, against the mean of α_S. Resolved: also μE/kT and the impulse μE/(ω√(I kT)).
 
     temperature : [K]
     Raises InputError as `choose_response` does.
@@ -34,18 +34,17 @@ def strength_for(pulse, species, temperature):
     moments = species.inertia[species.inertia > 0.0]
     thermal = sqrt(moments.min() * kt) if moments.size else np.inf
     dipole = float(np.linalg.norm(species.dipole))
+    figures = _averaged(pulse, response, kt, thermal)
     if resolved:
-        figures = {
+        figures |= {
             "dipole energy": (dipole * pulse.peak_field / kt, "kT"),
             "dipole impulse": (dipole * pulse.peak_field / (pulse.carrier * thermal), ""),
         }
-    else:
-        figures = _averaged(pulse, response, kt, thermal)
-        if dipole > 0.0 and moments.size:
-            mean = np.trace(response.polarizability) / 3.0
-            quiver = dipole**2 / (moments.min() * pulse.carrier**2)
-            figures["quiver of the dipole"] = (quiver / mean if mean > 0.0 else np.inf,
-                                               "of the mean polarizability")
+    elif dipole > 0.0 and moments.size:
+        mean = np.trace(response.polarizability) / 3.0
+        quiver = dipole**2 / (moments.min() * pulse.carrier**2)
+        figures["quiver of the dipole"] = (quiver / mean if mean > 0.0 else np.inf,
+                                           "of the mean polarizability")
     figures.update(_absorbed(pulse, response))
     photons = figures["photons absorbed"][0]
     if photons > TOO_MANY and HBAR * pulse.carrier / ELECTRON_VOLT >= VISIBLE:
@@ -66,6 +65,7 @@ def _averaged(pulse, response, kt, thermal):
         "alignment well": (0.25 * anisotropy * square * major / kt, "kT"),
         "gyration well": (0.25 * g * helical / kt, "kT"),
         "alignment impulse": (0.25 * anisotropy * square * major * length / thermal, ""),
+        "gyration impulse": (0.25 * g * helical * length / thermal, ""),
         "absorption impulse": (0.5 * mean * helical * length / thermal, ""),
     }
 
