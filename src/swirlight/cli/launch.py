@@ -50,4 +50,4 @@ def resume(
 def _report(run):
     from swirlight.run.answer import answer
 
-    typer.echo(answer(run.folder))
+    typer.echo(answer(run.path))
