@@ -1,0 +1,264 @@
+"""The text of a pair kernel: all site pairs of two kinds of bodies written out.
+
+A kernel runs over the neighbours of one body at a time, and everything inside that loop is
+plain arithmetic on scalars, so that the compiler can take 8 or 16 neighbours at once. To
+get there the loop over site pairs must be written out, for each pattern of sites. Nothing
+but the pattern enters the text: charges, σ, ε, cutoff and coefficients are arguments.
+
+Records  one row of words per body (`records.py`): three words for the centre, then x, y, z
+         of the lever arm of every interacting site.
+Images   the centre's words are fractions of the box edge, whose wrapped difference belongs
+         to the nearest image; the box is repeated first where that would not do.
+"""
+
+from dataclasses import dataclass
+
+LANES = {"float32": 16, "float64": 8}
+
+
+@dataclass(frozen=True)
+class Pattern:
+    """What the text depends on.
+
+    own, other : numbers of sites of the body and of its neighbours, of one kernel call.
+    own_words : length of the body's record.
+    central : whether the neighbour's only site is its centre, as an atom's.
+    lennard_jones, coulomb : the (a, b) site pairs that have each.
+    form : cut-off form of the Lennard-Jones part.
+    degree : of the polynomials that stand for the smooth part of the Coulomb law.
+    shifted : whether the Coulomb law has its force shifted by a constant.
+    energies : also energies and virial.
+    real : "float32" or "float64", of the arithmetic inside the loop.
+    """
+
+    own: int
+    other: int
+    own_words: int
+    central: bool
+    lennard_jones: tuple[tuple[int, int], ...]
+    coulomb: tuple[tuple[int, int], ...]
+    form: str
+    degree: int
+    shifted: bool
+    energies: bool
+    real: str
+
+    @property
+    def pairs(self):
+        """The (a, b) site pairs that act on each other at all, neighbour's site by site."""
+        acting = {*self.lennard_jones, *self.coulomb}
+        return sorted(acting, key=lambda pair: pair[::-1])
+
+
+HEADER = '''\
+"""Pair forces, written by swirlight.forces.kernels.source for
+{pattern}.
+"""
+
+import math
+
+import numba
+import numpy as np
+
+from swirlight.compiled import CHUNKS, kernel
+from swirlight.forces.kernels.lowlevel import at, streamlined{lanes} as streamlined
+
+real = np.{real}
+zero, half, one = real(0.0), real(0.5), real(1.0)
+
+
+@kernel(fast=True)
+def row(own, own_centre, other, other_centre, mine, my_sites, its_sites, neighbours, count,
+        edge, pairs, screening, limits, out):
+    streamlined()
+    cutoff2, scale, start, steep, far, pull = limits
+'''
+
+DRIVER = '''
+
+@kernel(parallel=True)
+def rows(own, own_centre, other, other_centre, my_sites, its_sites, entries, counts, edge, pairs,
+         screening, limits, body, force, torque, sums):
+    n = counts.shape[0]
+    for chunk in numba.prange(CHUNKS):
+        out = np.empty({out}, real)
+        for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
+            mine = i * {words}
+            row(own, own_centre, other, other_centre, mine, my_sites, its_sites, entries[i],
+                counts[i], edge, pairs, screening, limits, out)
+            b = body[i]
+            for a in range({sites}):
+                x = np.float64(own[mine + my_sites + 3 * a])
+                y = np.float64(own[mine + my_sites + 3 * a + 1])
+                z = np.float64(own[mine + my_sites + 3 * a + 2])
+                fx, fy, fz = np.float64(out[3 * a]), np.float64(out[3 * a + 1]), out[3 * a + 2]
+                force[b, 0] += fx
+                force[b, 1] += fy
+                force[b, 2] += fz
+                torque[b, 0] += y * fz - z * fy
+                torque[b, 1] += z * fx - x * fz
+                torque[b, 2] += x * fy - y * fx
+'''
+
+ROW_SUMS = ("lennard_jones", "coulomb", "virial_x", "virial_y", "virial_z")
+
+# The square root's reciprocal: the compiler makes the processor's estimate and a Newton step
+# of the first; the second starts there and takes a third-order step.
+RECIPROCAL_ROOT = {
+    "float32": ["w = one / math.sqrt(r2)"],
+    "float64": [
+        "w = np.float64(np.float32(1.0) / math.sqrt(np.float32(r2)))",
+        "h = one - r2 * w * w",
+        "w = w + w * h * (half + real(0.375) * h)",
+    ],
+}
+
+
+def _polynomial(name, degree):
+    """Horner's scheme for name0 + name1 t + …"""
+    text = f"{name}{degree}"
+    for k in range(degree - 1, -1, -1):
+        text = f"({text}) * t + {name}{k}" if k < degree - 1 else f"{text} * t + {name}{k}"
+    return text
+
+
+def _centres(pattern):
+    """Lines that set X, Y, Z, from this body's centre to its neighbour's nearest image."""
+    lines = []
+    for k, x in enumerate("XYZ"):
+        if pattern.real == "float32":
+            lines.append(f"{x} = real(np.int32(at(other_centre, {k}, j) - centre{k})) * edge{k}")
+        else:
+            lines += [f"s = at(other, {k}, j) - centre{k}",
+                      f"{x} = (s - np.floor(s + half)) * edge{k}"]
+    # A row is filled up to a whole number of lanes; what fills it is moved out of reach.
+    return [*lines, "X = X if k < count else far"]
+
+
+def _coulomb(pattern, name):
+    lines = ["t = r2 * scale - one", f"p = {_polynomial('p', pattern.degree)}"]
+    root = "(w2 - pull)" if pattern.shifted else "w2"
+    lines.append(f"f = q{name} * (w * {root} - p)")
+    if pattern.energies:
+        tilt = " + pull * r2 * w" if pattern.shifted else ""
+        lines += [f"g = {_polynomial('g', pattern.degree)}",
+                  f"u = q{name} * (w - g{tilt})",
+                  "coulomb += u if r2 < cutoff2 else zero"]
+    return lines
+
+
+def _lennard_jones(pattern, name, add):
+    """Lines that set or add to f, the force over the distance, outward."""
+    lines = ["s = w2 * w2 * w2",
+             f"a, b = twelve{name} * s, six{name}",
+             "u = s * (a - b)",
+             "v = real(6.0) * s * w2 * (a + a - b)"]
+    if pattern.form == "switched":
+        lines += ["x = (r2 * w - start) * steep",
+                  "x = x if x > zero else zero",
+                  "h = x * (one - x)",
+                  "s = one + x * x * x * (x * (real(15.0) - real(6.0) * x) - real(10.0))",
+                  "v = v * s + real(30.0) * steep * u * w * h * h",
+                  "u = u * s"]
+    if pattern.form == "force-shifted":
+        lines += [f"v -= slope{name} * w", f"u += slope{name} * (r2 * w) + offset{name}"]
+    lines.append("f += v" if add else "f = v")
+    if pattern.energies:
+        lines.append("lennard_jones += u if r2 < cutoff2 else zero")
+    return lines
+
+
+def _site_pair(pattern, a, b):
+    lines = [f"dx, dy, dz = {', '.join(f'{x}b - {x}{a}' for x in 'xyz')}",
+             "r2 = dx * dx + dy * dy + dz * dz", *RECIPROCAL_ROOT[pattern.real], "w2 = w * w"]
+    charged = (a, b) in pattern.coulomb
+    if charged:
+        lines += _coulomb(pattern, f"{a}_{b}")
+    if (a, b) in pattern.lennard_jones:
+        lines += _lennard_jones(pattern, f"{a}_{b}", add=charged)
+    lines.append("f = f if r2 < cutoff2 else zero")
+    for x in "xyz":
+        if pattern.energies:
+            lines += [f"d{x} *= f", f"f{x}{a} -= d{x}", f"pair{x} += d{x}"]
+        else:
+            lines.append(f"f{x}{a} -= f * d{x}")
+    return lines
+
+
+def _before(pattern):
+    """Lines ahead of the loop: everything that does not change from neighbour to neighbour."""
+    count = pattern.degree + 1
+    lines = [f"{name}{k} = screening[{row}, {k}]"
+             for row, name in enumerate("pg" if pattern.energies else "p") for k in range(count)]
+    lines += [f"edge{k} = edge[{k}]" for k in range(3)]
+    centre = "own_centre" if pattern.real == "float32" else "own"
+    lines += [f"centre{k} = {centre}[mine + {k}]" for k in range(3)]
+    for n, (a, b) in enumerate(pattern.lennard_jones):
+        lines += [f"{name}{a}_{b} = pairs[{n}, {k}]"
+                  for k, name in enumerate(("twelve", "six", "slope", "offset"))
+                  if k < 2 or pattern.form == "force-shifted"]
+    first = len(pattern.lennard_jones)
+    lines += [f"q{a}_{b} = pairs[{first + n}, 0]" for n, (a, b) in enumerate(pattern.coulomb)]
+    for a in range(pattern.own):
+        lines += [f"{x}{a} = own[mine + my_sites + {3 * a + k}]" for k, x in enumerate("xyz")]
+        lines.append(" = ".join(f"f{x}{a}" for x in "xyz") + " = zero")
+    if pattern.energies:
+        lines.append(" = ".join(("total_lj", "total_coulomb", *(f"virial{x}" for x in "xyz")))
+                     + " = zero")
+    return lines
+
+
+def _loop(pattern):
+    """Lines of the loop over neighbours."""
+    lines = ["j = neighbours[k]", *_centres(pattern)]
+    if pattern.energies:
+        lines.append("lennard_jones = coulomb = pairx = pairy = pairz = zero")
+    site = None
+    for a, b in pattern.pairs:
+        if b != site:
+            site = b
+            lines += [f"{x}b = {x.upper()}" if pattern.central
+                      else f"{x}b = {x.upper()} + at(other, its_sites + {3 * b + k}, j)"
+                      for k, x in enumerate("xyz")]
+        lines += _site_pair(pattern, a, b)
+    if pattern.energies:
+        lines += ["total_lj += lennard_jones", "total_coulomb += coulomb"]
+        lines += [f"virial{x} += pair{x} * {x.upper()}" for x in "xyz"]
+    return lines
+
+
+def _after(pattern):
+    names = [f"f{x}{a}" for a in range(pattern.own) for x in "xyz"]
+    if pattern.energies:
+        names += ["total_lj", "total_coulomb", "virialx", "virialy", "virialz"]
+    return [f"out[{k}] = {name}" for k, name in enumerate(names)]
+
+
+def pair_source(pattern):
+    """The text of a module whose `rows` adds the pair forces of one pattern to all bodies.
+
+    rows(own, own_centre, other, other_centre, my_sites, its_sites, entries, counts, edge,
+         pairs, screening, limits, body, force, torque, sums)
+
+    own, other : flat records; own_centre, other_centre : the same memory as int32.
+    my_sites, its_sites : word of a record with which the sites of this call begin.
+    entries, counts : (n, capacity) int32 record starts of the neighbours of each body, (n,).
+    edge : (3,) nm per unit of the centre's words.
+    pairs : the rows of `laws.lennard_jones_terms`, then (k q q', 0, 0, 0).
+    screening : (2, degree + 1) of `laws.CoulombLaw.polynomials`.
+    limits : rc², 2/rc², start of the switch, 1 / its width, a place out of reach, force shift.
+    body : (n,) where force and torque (N, 3) and, with energies, sums (N, 5) are added to.
+    """
+    lanes = LANES[pattern.real]
+    size = 3 * pattern.own + (len(ROW_SUMS) if pattern.energies else 0)
+    shift = lanes.bit_length() - 1
+    text = HEADER.format(pattern=pattern, lanes=lanes, real=pattern.real)
+    text += "".join(f"    {line}\n" for line in _before(pattern))
+    text += f"    for k in range(((count + {lanes - 1}) >> {shift}) << {shift}):\n"
+    text += "".join(f"        {line}\n" for line in _loop(pattern))
+    text += "".join(f"    {line}\n" for line in _after(pattern))
+    text += DRIVER.format(out=size, words=pattern.own_words, sites=pattern.own)
+    if pattern.energies:
+        text += f"            for s in range({len(ROW_SUMS)}):\n"
+        text += f"                sums[b, s] += out[{3 * pattern.own} + s]\n"
+    return text

@@ -1,0 +1,277 @@
+"""Which bodies are near which: two lists, one inside the other.
+
+The outer list holds bodies whose centres were near when it was made; turning does not
+matter to it. The inner list, which the pair kernels read, holds those of it with any two
+sites within cutoff + skin. It is chosen anew when a site has moved by half its skin, and
+the outer one when a centre has moved by half the gap between the two. So no pair of sites
+within the cutoff is ever missed.
+
+Both are full lists, a row per body, an entry per (body, image): where the box is too small
+for one image per body it is repeated (see `kernels/records.py`).
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from swirlight.compiled import CHUNKS
+from swirlight.errors import RunError
+from swirlight.forces.kernels import records as kernels
+from swirlight.forces.sites import place_sites
+
+LANES = 16  # rows are filled up to a multiple of this
+SKINS = (0.02, 0.3)  # the least and the largest inner skin. [nm]
+FIRST_SKIN, GAP = 0.08, 0.15  # inner skin to begin with; outer minus inner skin. [nm]
+# Time of one choice of the inner list over that of one call of the forces (measured).
+LIST_COST = 0.4
+
+
+@dataclass
+class Kind:
+    """The bodies of one species as the kernels see them, in the order of their cells.
+
+    first, count : which bodies; types, local : (sites,) the interacting sites, by type and by
+    place in the body; radius : of the outermost [nm]; central : a single site in the centre.
+    body : (count,) in the order of the records; site : (count, sites) rows of the lever arms;
+    place : (count, 3) wrapped, when the outer list was made; reference : (count, sites, 3)
+    where the sites were when the inner list was made.
+    """
+
+    first: int
+    count: int
+    types: np.ndarray
+    local: np.ndarray
+    radius: float
+    central: bool
+    body: np.ndarray | None = None
+    site: np.ndarray | None = None
+    place: np.ndarray | None = None
+    records: np.ndarray | None = None
+    reference: np.ndarray | None = None
+
+    @property
+    def sites(self):
+        return len(self.types)
+
+    @property
+    def words(self):
+        """Length of a record."""
+        return kernels.record_words(self.sites)
+
+    @property
+    def centres(self):
+        """The records as int32."""
+        return self.records.view(np.int32)
+
+
+class Grid:
+    """Cells of at least half the reach in the repeated box."""
+
+    def __init__(self, box, repeat, reach, bodies):
+        self.box, self.repeat = box, repeat
+        self.edge = box * repeat
+        # More cells than bodies would only be empty.
+        most = max(4, int(np.ceil((8 * bodies * np.prod(repeat)) ** (1 / 3))))
+        self.cells = np.clip(np.floor(2 * self.edge / reach), 1, most).astype(int)
+
+    def wrap(self, place):
+        """Places [nm] in the unrepeated box."""
+        return place - self.box * np.floor(place / self.box)
+
+    def cell(self, place):
+        """The cell of each place in the repeated box, x fastest."""
+        index = np.minimum((place / self.edge * self.cells).astype(int), self.cells - 1)
+        return (index[:, 2] * self.cells[1] + index[:, 1]) * self.cells[0] + index[:, 0]
+
+    def copies(self, place):
+        """Places of all images in the repeated box, copy by copy in the order of `place`."""
+        x, y, z = (np.arange(n) for n in self.repeat)
+        shift = np.stack(np.meshgrid(z, y, x, indexing="ij"), axis=-1).reshape(-1, 3)[:, ::-1]
+        return (place[None] + (shift * self.box)[:, None]).reshape(-1, 3)
+
+
+class Rows:
+    """The lists of one kind's bodies against another's."""
+
+    def __init__(self):
+        self.capacity = 16
+        self.entries = self.counts = None
+
+    def find(self, own, other, grid, reach, same):
+        """List the bodies of `other` within reach of those of `own`, centre to centre."""
+        place = grid.copies(other.place)
+        cell = grid.cell(place)
+        slot = np.argsort(cell, kind="stable")
+        start = np.searchsorted(cell[slot], np.arange(np.prod(grid.cells) + 1))
+        span = np.full(3, 2)
+        while True:
+            self.found = np.zeros((own.count, self.capacity), np.int32)
+            self.found_counts = np.zeros(own.count, np.int32)
+            kernels.find_candidates(own.place, np.ascontiguousarray(place[slot].T), start,
+                                    slot.astype(np.int32), grid.cells, span, grid.edge, reach**2,
+                                    same, self.found, self.found_counts)
+            most = int(self.found_counts.max())
+            if most <= self.capacity:
+                break
+            self.capacity = -(-int(1.1 * most) // LANES) * LANES
+        self.entries = np.zeros_like(self.found)
+        self.counts = np.zeros_like(self.found_counts)
+
+    def choose(self, own, other, unit, reach):
+        """List, of those found, the bodies with any two sites within reach."""
+        dtype = own.records.dtype.type
+        kernels.keep_near(own.records.ravel(), own.centres.ravel(), other.records.ravel(),
+                          other.centres.ravel(), own.sites, other.sites, own.words,
+                          np.int32(other.words), self.found, self.found_counts, unit,
+                          dtype(reach**2 * (1 + 1e-6)), self.entries, self.counts)
+
+
+def interacting_kinds(system, interacting):
+    """One `Kind` for each species that has interacting sites (a mask of the types)."""
+    kinds, first = [], 0
+    for k, count in enumerate(system.counts):
+        types = np.arange(system.type_start[k], system.type_start[k + 1])
+        local = np.flatnonzero(interacting[types])
+        if len(local) and count:
+            places = system.type_position[types[local]]
+            radius = float(np.sqrt((places**2).sum(axis=1)).max())
+            kinds.append(Kind(first, count, types[local], local, radius,
+                              central=len(local) == 1 and radius == 0.0))
+        first += count
+    return kinds
+
+
+class Neighbours:
+    """The neighbour lists of a system: call `update` before the forces.
+
+    kinds : the `Kind`s; rows : {(own, other): Rows} by their numbers.
+    unit : (3,) nm per unit of a record's centre words, of the records' type.
+    """
+
+    def __init__(self, system, kinds, cutoff, dtype, repeat=None):
+        """repeat : (3,) times to repeat the box; None: as few as one image per body allows."""
+        self.system, self.kinds, self.cutoff = system, kinds, cutoff
+        self.dtype, self.wanted_repeat = np.dtype(dtype), repeat
+        self.rows = {(a, b): Rows() for a in range(len(kinds)) for b in range(len(kinds))}
+        self.lever = np.empty((int(system.site_start[-1]), 3))
+        self.radius = max((k.radius for k in kinds), default=0.0)
+        self.skin, self.outer_skin, self.calls = FIRST_SKIN, None, 0
+        self.moved = np.zeros(CHUNKS)
+        self.box = None  # that the lists were made for
+
+    def update(self, position, orientation, box):
+        """Bring records and lists up to date with where the bodies are.
+
+        Raises RunError when that is no longer known (NaN).
+        """
+        place_sites(self.system, position, orientation, self.lever)
+        if self.box is None or not np.array_equal(box, self.box):
+            self._make_outer(position, box)
+        else:
+            moved = self._place(position, box)
+            self.calls += 1
+            if 2 * moved <= self.skin:
+                return
+            self._adapt_skin(2 * moved)
+            drift = np.sqrt(((position - self.outer_position) ** 2).sum(axis=1).max())
+            if self.skin + 2 * drift > self.outer_skin:
+                self._make_outer(position, box)
+        self._choose_inner(position, orientation)
+
+    def memory(self):
+        """What `restore` needs to make the same lists again: a dict of arrays."""
+        if self.box is None:
+            return {}
+        return {
+            "skins": np.array([self.skin, self.outer_skin, self.calls]),
+            "box": self.box,
+            "outer_position": self.outer_position,
+            "inner_position": self.inner_position,
+            "inner_orientation": self.inner_orientation,
+        }
+
+    def restore(self, memory):
+        """Make the lists again from what `memory` returned."""
+        self.box = None
+        if not memory:
+            return
+        self.skin, outer_skin, calls = (float(value) for value in memory["skins"])
+        position, orientation = memory["inner_position"], memory["inner_orientation"]
+        place_sites(self.system, position, orientation, self.lever)
+        self._make_outer(memory["outer_position"], memory["box"], outer_skin)
+        self._choose_inner(position, orientation)
+        self.calls = int(calls)
+
+    def _adapt_skin(self, moved):
+        """Set the inner skin to what costs least at the speed sites were seen to move.
+
+        A call costs in proportion to 1 + 3 skin/cutoff, and LIST_COST speed/skin more.
+        """
+        speed = moved / self.calls
+        if self.calls > 1 or moved < 2 * self.skin:  # else bodies were moved, they did not move
+            best = np.sqrt(LIST_COST * speed * self.cutoff / 3)
+            self.skin = float(np.clip(0.5 * (self.skin + best), *SKINS))
+
+    def _place(self, position, box):
+        """Write all records; the largest distance of a site from the inner list's places."""
+        furthest = 0.0
+        for kind in self.kinds:
+            kernels.place(position, self.lever, kind.body, kind.site, box, self.repeat,
+                          kind.records, kind.centres, kind.reference, self.moved)
+            furthest = max(furthest, float(self.moved.max()))
+            if not np.isfinite(furthest):
+                raise RunError("positions or orientations are no longer finite numbers")
+        return np.sqrt(furthest)
+
+    def _make_outer(self, position, box, outer_skin=None):
+        """Sort the bodies into cells and list all with centres near each other."""
+        self.box, self.outer_position = np.array(box), np.array(position)
+        self.outer_skin, self.repeat = self._images(outer_skin)
+        reach = self.cutoff + 2 * self.radius + self.outer_skin
+        grid = Grid(self.box, self.repeat, reach, self.system.bodies)
+        for kind in self.kinds:
+            self._sort(kind, grid)
+        for (a, b), rows in self.rows.items():
+            own, other = self.kinds[a], self.kinds[b]
+            near = self.cutoff + own.radius + other.radius + self.outer_skin
+            rows.find(own, other, grid, near, same=a == b)
+
+    def _images(self, outer_skin):
+        """The outer skin and how often the box is repeated along each edge.
+
+        One image per body does while the edge is at least twice the reach; a skin a little
+        thinner is cheaper than another image.
+        """
+        if outer_skin is None:
+            outer_skin = self.skin + GAP
+            room = self.box / 2 - self.cutoff - 2 * self.radius
+            tight = room[(room < outer_skin) & (room >= self.skin + GAP / 2)]
+            outer_skin = float(min([outer_skin, *tight]))
+        if self.wanted_repeat is not None:
+            return outer_skin, np.array(self.wanted_repeat)
+        reach = self.cutoff + 2 * self.radius + outer_skin
+        return outer_skin, 2 ** np.ceil(np.log2(np.maximum(2 * reach / self.box, 1))).astype(int)
+
+    def _sort(self, kind, grid):
+        """Order a kind's bodies by cells; make room for their records."""
+        bodies = np.arange(kind.first, kind.first + kind.count)
+        place = self.outer_position[bodies]
+        order = np.argsort(grid.cell(grid.wrap(place)), kind="stable")
+        kind.body = bodies[order]
+        kind.site = self.system.site_start[kind.body][:, None] + kind.local
+        kind.place = grid.wrap(place[order])
+        shape = (kind.count * int(np.prod(self.repeat)), kind.words)
+        kind.records = np.zeros(shape, self.dtype)
+        kind.reference = np.zeros((*kind.site.shape, 3))
+
+    def _choose_inner(self, position, orientation):
+        """List, of the outer list, the bodies that have sites near each other."""
+        self.inner_position, self.inner_orientation = np.array(position), np.array(orientation)
+        self.calls = 0
+        for kind in self.kinds:
+            kind.reference[:] = position[kind.body][:, None] + self.lever[kind.site]
+        self._place(position, self.box)
+        whole = kernels.WHOLE if self.dtype == np.float32 else 1.0
+        self.unit = (self.box * self.repeat / whole).astype(self.dtype)
+        for (a, b), rows in self.rows.items():
+            rows.choose(self.kinds[a], self.kinds[b], self.unit, self.cutoff + self.skin)
