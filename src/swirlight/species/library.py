@@ -2,7 +2,6 @@
 
 import difflib
 import pathlib
-from functools import lru_cache
 from importlib import resources
 
 from swirlight.config.reader import printable, read_text, read_yaml
@@ -36,19 +35,5 @@ def load_species(name_or_path, folder=None):
         raise InputError(f'no species "{printable(text, 60)}" in the library{hint}; it has'
                          f" {', '.join(names)}; a species file is given by its path, ending in"
                          " .yaml")
-    return _from_library(text)
-
-
-def library_file(name):
-    """The packaged file of a library species, as something with `read_bytes` and `name`."""
-    return resources.files("swirlight.species") / "library" / f"{name}.yaml"
-
-
-@lru_cache
-def _from_library(name):
-    file = library_file(name)
-    species = read_species(read_text(file.read_text(encoding="utf-8"), str(file)))
-    for value in vars(species).values():  # shared by all who ask: nobody may change it
-        if hasattr(value, "setflags"):
-            value.setflags(write=False)
-    return species
+    file = resources.files("swirlight.species") / "library" / f"{text}.yaml"
+    return read_species(read_text(file.read_text(encoding="utf-8"), str(file)))
