@@ -6,9 +6,10 @@ means one function and its name in `PARTS`. Nothing compiled is imported here.
 
 import numpy as np
 
-from swirlight.errors import InputError
+from swirlight.errors import ConfigError, InputError
 from swirlight.forces.box import check_box
 from swirlight.light.build import bias_from_config, pulses_from_config
+from swirlight.light.response import choose_response
 from swirlight.run import plan_cost, plan_light, plan_sample, plan_stages
 from swirlight.run.exposures import list_exposures
 from swirlight.run.plan_echo import echo
@@ -45,9 +46,10 @@ def check_config(config):
     subject = examine(config)
     sections, warnings = [], []
     for part in PARTS:
-        for found in _under(config, part, subject):
+        for found in part(subject):
             (warnings if isinstance(found, Notice) else sections).append(found)
-    return Plan(config.title, tuple(sections), _once(warnings), lit=bool(subject.pulses))
+    warnings = tuple(dict.fromkeys(warnings))  # several pulses may say the same
+    return Plan(config.title, tuple(sections), warnings, lit=bool(subject.pulses))
 
 
 def examine(config):
@@ -61,6 +63,10 @@ def examine(config):
     _named(config, "forces.electrostatics", _require_neutral, system)
     last = config.stages[-1]
     pulses = _named(config, "light", pulses_from_config, config.light, system, last, config.folder)
+    for n, pulse in enumerate(pulses):
+        for species in system.species:
+            _named(config, f"light[{n}].carrier", choose_response, species, pulse.carrier,
+                   pulse.coupling == "resolved")
     return Subject(
         config=config, system=system, box=np.asarray(box, float), pulses=pulses,
         bias=bias_from_config(config.bias_field), lit=last if pulses else None,
@@ -84,28 +90,18 @@ def _require_neutral(system):
         raise InputError(f"{kind} needs a neutral box, and this one has {charge:.6g} e")
 
 
-def _under(config, part, subject):
-    try:
-        return list(part(subject))
-    except InputError as error:
-        raise _refusal(config, "", error) from None
-
-
 def _named(config, key, function, *arguments):
+    """Call a function; its refusal gets the file and key before it, if it names none itself."""
     try:
         return function(*arguments)
+    except ConfigError:  # of a species file: it names file, line and key
+        raise
     except InputError as error:
         raise _refusal(config, key, error) from None
 
 
 def _refusal(config, key, reason):
-    """An InputError that begins with file and key, unless the reason names a place itself."""
     reason = str(reason)
-    if isinstance(config.path, object) and config.path and str(config.path) in reason:
-        return InputError(reason)
     named = reason if not key or reason.startswith(key.split(".")[0]) else f"{key}: {reason}"
     return InputError(f"{config.path}: {named}" if config.path else named)
 
-
-def _once(notices):
-    return tuple(dict.fromkeys(notices))

@@ -36,7 +36,7 @@ def cost(subject):
         Row("disk per trajectory", disk["trajectory"] / MEBIBYTE, "MiB"),
         Row("disk for preparation", disk["preparation"] / MEBIBYTE, "MiB",
             "equilibrium, continuation and start files"),
-        Row("disk in all", total / MEBIBYTE, "MiB", "somewhat more while segments are put together"),
+        Row("disk in all", total / MEBIBYTE, "MiB", "more while segments are put together"),
     ]
     rows += _time(subject, cores, side)
     yield Section("cost", tuple(rows))
@@ -66,10 +66,14 @@ def _time(subject, cores, side):
         Row("steps in all", before + count * each),
     ]
     if before or side == 1:
-        rows.append(Row(f"rate on {cores} threads", alone.steps_per_second, "steps/s", alone.source))
+        rows.append(_rate(f"rate on {cores} threads", alone))
     if side > 1:
-        rows.append(Row("rate on 1 thread", beside.steps_per_second, "steps/s", beside.source))
+        rows.append(_rate("rate on 1 thread", beside))
     return [*rows, Row("time", seconds / 60.0, "min", "estimate, compilation and output left out")]
+
+
+def _rate(name, rate):
+    return Row(name, rate.steps_per_second, "steps/s", rate.source)
 
 
 def preparation_steps(subject):

@@ -1,22 +1,26 @@
 """Part of `check` that says back what was understood: every key, in one fixed unit a quantity."""
 
 from swirlight.run.plan_page import Row, Section
+from swirlight.units import KINDS
+
+SHOWN = {kind.shown for kind in KINDS.values()}
+WORDS = ("title", "author", "output")  # text that only looks like a quantity
 
 
 def echo(subject):
     """One section per section of the resolved config; keys as a user would write them."""
-    plain = {}
+    plain = []
     for key, value in subject.config.resolved().items():
-        rows = tuple(Row(name, value) for name, value in leaves(value, key))
+        rows = [_row(name, leaf) for name, leaf in leaves(value, key)]
         if isinstance(value, dict | list) and rows:
-            yield Section(f"config: {key}", rows)
-        elif rows:
-            plain[key] = rows[0]
-    yield Section("config", tuple(plain.values()))
+            yield Section(f"config: {key}", tuple(rows))
+        else:
+            plain += rows
+    yield Section("config", tuple(plain))
 
 
 def leaves(value, key):
-    """(key path, text or number) of every scalar below a plain value; empty lists as ``[]``."""
+    """(key path, text or number) of every scalar below a plain value; a flat list is one text."""
     if isinstance(value, dict):
         for name, inner in value.items():
             yield from leaves(inner, f"{key}.{name}")
@@ -26,4 +30,14 @@ def leaves(value, key):
     elif isinstance(value, list):
         yield key, f"[{', '.join(map(str, value))}]"
     else:
-        yield key, "null" if value is None else value
+        yield key, value
+
+
+def _row(key, value):
+    """A quantity as number and unit, with all its digits; anything else as it stands."""
+    if isinstance(value, float):
+        return Row(key, value, text=repr(value))
+    number, _, unit = value.partition(" ") if isinstance(value, str) else ("", "", "")
+    if key in WORDS or unit not in SHOWN:
+        return Row(key, value)
+    return Row(key, float(number), unit, text=number)

@@ -1,4 +1,4 @@
-"""Parts of `check` about the light: each pulse, what it is to each body, heating, the bias field."""
+"""Parts of `check` about the light: each pulse, what it is to each body, heating, the bias."""
 
 import numpy as np
 
@@ -27,7 +27,7 @@ def pulses(subject):
         rows += [Row(name, float(value), unit) for name, (value, unit) in said.figures.items()]
         rows += [
             Row("ħω/kT", float(photon_over_kt(pulse.carrier, temperature))),
-            Row("helicity product s3", float(pulse.s3)),
+            Row("s3", float(pulse.s3), "", "sin 2χ, 1 for positive helicity"),
             Row("in kinds", pulse.in_kinds),
         ]
         yield Section(key, tuple(rows))
@@ -70,10 +70,10 @@ def _steps(key, pulse, timestep):
     warning = check_steps(pulse, timestep)
     if warning is not None:
         yield Notice("steps-per-cycle", f"{key}: {warning}")
-    steps = pulse.envelope.duration / timestep
-    if steps < PULSE_STEPS:
-        yield Notice("steps-per-pulse", f"{key}.duration: {steps:.3g} timesteps in the pulse;"
-                     f" with {pulse.envelope.duration / PULSE_STEPS:.3g} ps there are {PULSE_STEPS}")
+    duration = pulse.envelope.duration
+    if duration < PULSE_STEPS * timestep * (1.0 - 1e-9):
+        yield Notice("steps-per-pulse", f"{key}.duration: {duration / timestep:.3g} timesteps in"
+                     f" the pulse; with {duration / PULSE_STEPS:.3g} ps there are {PULSE_STEPS}")
     speed = fastest_turning(pulse)
     if speed * timestep * PULSE_STEPS > np.pi:  # an azimuth repeats after half a turn
         yield Notice("steps-per-turn", f"{key}.turning: the azimuth turns at up to {speed:.3g}"
@@ -149,10 +149,11 @@ _MEANING = {
     "alignment well": "energy of the polarizability from best to worst orientation",
     "gyration well": "|g||G|/4kT",
     "alignment impulse": "over √(IkT); linear response wants it ≪ 1",
+    "gyration impulse": "over √(IkT); linear response wants it ≪ 1",
     "absorption impulse": "over √(IkT); linear response wants it ≪ 1",
     "dipole energy": "largest μE",
     "dipole impulse": "μE0/(ω√(IkT)), the swing of half a cycle; linear response wants it ≪ 1",
-    "quiver of the dipole": "the effective polarizability −μ²/(Iω²), which averaged light leaves out",
+    "quiver of the dipole": "its effective polarizability −μ²/(Iω²), left out by averaged light",
 }
 
 
@@ -163,12 +164,10 @@ def deciding(pulse, figures, rotation_period):
     way; for a resolved dipole the smaller of well and swing, as a fast carrier leaves no time
     for a deep well and a slow one makes a long swing of a shallow one.
     """
+    kind = "impulse" if pulse.envelope.duration < rotation_period else "well"
+    names = [f"alignment {kind}", f"gyration {kind}", "absorption impulse"]
     if pulse.coupling == "resolved":
-        names = [min(("dipole energy", "dipole impulse"), key=lambda name: figures[name][0])]
-    elif pulse.envelope.duration < rotation_period:
-        names = ["alignment impulse", "absorption impulse"]
-    else:
-        names = ["alignment well", "gyration well", "absorption impulse"]
+        names.append(min(("dipole energy", "dipole impulse"), key=lambda name: figures[name][0]))
     name = max(names, key=lambda name: figures[name][0])
     return name, figures[name][0]
 
@@ -176,7 +175,7 @@ def deciding(pulse, figures, rotation_period):
 def _beyond_linear(where, pulse, figures, subject):
     name, value = deciding(pulse, figures, subject.rotation_period)
     if value > LINEAR_RESPONSE:
-        unit = " kT" if "well" in name or "energy" in name else " thermal angular momenta √(IkT)"
+        unit = " thermal angular momenta √(IkT)" if name.endswith("impulse") else " kT"
         yield Notice("beyond-linear-response", f"{where}: {name} is {value:.3g}{unit}: above"
                      f" {LINEAR_RESPONSE} the response is no longer proportional to the intensity")
 
@@ -191,29 +190,29 @@ def heating(subject):
     """Energy absorbed by all pulses and the temperature rise it stands for."""
     if not subject.pulses:
         return
-    absorbed, capacity, sources = 0.0, 0.0, []
+    absorbed, capacity, temperature = 0.0, 0.0, subject.system.temperature
     for species, count in subject.counted_species:
-        per_body = sum(p.count * _absorbed_energy(p, species) for p in subject.pulses)
+        per_body = sum(p.count * _absorbed_energy(p, species, temperature) for p in subject.pulses)
         absorbed += count * per_body / subject.system.bodies
-        value, source = heat_capacity(species)
-        capacity += count * value / subject.system.bodies
-        sources.append(f"{species.name}: {source}")
+        capacity += count * heat_capacity(species)[0] / subject.system.bodies
+    bounds = [s.name for s, n in subject.counted_species if n and s.heat_capacity is None]
+    note = f"; an upper bound: C_V of {', '.join(bounds)} is not known" if bounds else ""
     rise = absorbed / capacity
     rows = [
         quantity("energy absorbed", absorbed, "energy", "by all pulses, mean per body"),
-        quantity("heating", rise, "temperature", f"E_abs/C_V with C_V of {'; '.join(sources)}"),
+        quantity("heating", rise, "temperature", f"E_abs/C_V{note}"),
     ]
     if any(p.coupling == "resolved" for p in subject.pulses) and _has_dipole(subject):
         rows.append(Row("dipolar heating", "unknown before the run"))
     yield Section("heating", tuple(rows))
-    if rise > HEATING * subject.system.temperature:
+    if rise > HEATING * temperature:
         yield Notice("heating", f"light: absorption heats the sample by {rise:.3g} K, which the"
                      " bodies do not feel in this model")
 
 
-def _absorbed_energy(pulse, species):
-    """E_abs of one copy, ½ω (Tr αD/3) ∫|𝓔|²dt. [u nm²/ps²]"""
-    figures, _ = strength_for(pulse, species, 1.0)
+def _absorbed_energy(pulse, species, temperature):
+    """E_abs of one copy per body. [u nm²/ps²]"""
+    figures, _ = strength_for(pulse, species, temperature)
     return figures["photons absorbed"][0] * HBAR * pulse.carrier
 
 
@@ -243,10 +242,13 @@ def odd_part(subject):
     lit = exposed(subject.pulses)
     if not {"plus", "minus"} <= kinds or not lit or _has_odd_part(lit, subject):
         return
-    yield Notice("no-odd-part", "exposures.kinds: plus and minus are the same here: averaged"
-                 " light of one azimuth reaches the odd response only through absorptive"
-                 " polarizability, gyration or rectification with a bias field, and no species"
-                 " has them")
+    if any(p.ellipticity for p in lit):
+        why = ("averaged light of one azimuth has an odd part only through absorptive"
+               " polarizability, gyration, or rectification with a bias field, and no species has"
+               " them")
+    else:
+        why = "linear light of one azimuth is its own mirror image"
+    yield Notice("no-odd-part", f"exposures.kinds: plus and minus come out the same: {why}")
 
 
 def _has_odd_part(lit, subject):

@@ -27,13 +27,15 @@ CAUTION = (
 class Row:
     """One figure: its name, a number or words, the unit, and where it comes from or what it means.
 
-    A dimensionless number has the unit "".
+    A dimensionless number has the unit "". `text` is the value as shown, where four digits
+    are not what is wanted.
     """
 
     name: str
-    value: float | int | str
+    value: float | int | bool | str
     unit: str = ""
     note: str = ""
+    text: str = ""
 
     def __str__(self):
         return f"{self.shown} {self.unit}".rstrip()
@@ -41,6 +43,10 @@ class Row:
     @property
     def shown(self):
         """The value as text: four digits, whole numbers in full."""
+        if self.text:
+            return self.text
+        if isinstance(self.value, bool):
+            return "true" if self.value else "false"
         if isinstance(self.value, float):
             return f"{self.value:.4g}"
         return str(self.value)
