@@ -35,5 +35,10 @@ def load_species(name_or_path, folder=None):
         raise InputError(f'no species "{printable(text, 60)}" in the library{hint}; it has'
                          f" {', '.join(names)}; a species file is given by its path, ending in"
                          " .yaml")
-    file = resources.files("swirlight.species") / "library" / f"{text}.yaml"
+    file = library_file(text)
     return read_species(read_text(file.read_text(encoding="utf-8"), str(file)))
+
+
+def library_file(name):
+    """The packaged file of a library species, as something with `read_bytes` and `name`."""
+    return resources.files("swirlight.species") / "library" / f"{name}.yaml"
