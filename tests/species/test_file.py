@@ -3,6 +3,8 @@
 import jsonschema
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from swirlight import units
 from swirlight.config.reader import read_text
@@ -232,3 +234,22 @@ def test_the_schema_accepts_what_the_loader_accepts():
     for text in (TOP.replace("source: invented", "sauce: invented"), TOP.replace("14.0 u", "14.0"),
                  TOP.replace("symmetry: checked", "symmetry: maybe")):
         assert not validator.is_valid(read_text(text, "x").tree)
+
+
+WORDS = st.sampled_from(["0", "-1", "1e30 u", "0 0 0 nm", "null", "[]", "{}", "[1, 2]", "true", "C",
+                         "1e-9 nm", "nan u", "'", "{", ":", "0 u", "1 angstrom^3", "x" * 300])
+
+
+@settings(max_examples=150, deadline=None, derandomize=True)
+@given(st.data())
+def test_mutated_files_are_read_or_refused_but_never_fail_otherwise(data):
+    parts = TOP.replace("{", " { ").replace("}", " } ").replace(", ", " , ").split(" ")
+    for _ in range(data.draw(st.integers(1, 4))):
+        place = data.draw(st.integers(0, len(parts) - 1))
+        parts[place] = data.draw(WORDS)
+    try:
+        body = species(" ".join(parts))
+    except ConfigError as refused:
+        assert all(line.startswith("some.yaml:") for line in refused.lines)
+    else:
+        assert np.isfinite(body.inertia).all() and np.isfinite(body.sites).all()

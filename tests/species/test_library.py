@@ -145,6 +145,8 @@ def test_pictures_need_a_body_and_a_known_suffix(tmp_path):
         run("--picture", str(tmp_path / "a.png"))
     with pytest.raises(InputError, match="ends in .png"):
         run("water", "--picture", str(tmp_path / "a.exe"))
+    with pytest.raises(InputError, match="no folder"):
+        run("water", "--picture", str(tmp_path / "nowhere" / "a.png"))
     assert not list(tmp_path.iterdir())
 
 

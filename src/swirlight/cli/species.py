@@ -37,6 +37,8 @@ def species(
     if picture is not None:
         if picture.suffix not in (".png", ".svg", ".pdf"):
             raise InputError(f"--picture {picture}: needs a name that ends in .png, .svg or .pdf")
+        if not picture.absolute().parent.is_dir():
+            raise InputError(f"--picture {picture}: there is no folder {picture.parent}")
         from swirlight.species.picture import draw_species
 
         draw_species(found, picture)
