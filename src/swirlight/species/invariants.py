@@ -62,11 +62,9 @@ def within_nearest(vector, spaces):
 
 
 def _null_space(matrix):
-    """(k, n) orthonormal rows x with matrix @ x = 0, up to `_ROUNDING`."""
-    _, size, rows = np.linalg.svd(matrix)
-    padded = np.zeros(matrix.shape[1])
-    padded[: len(size)] = size
-    return rows[padded <= _ROUNDING]
+    """(k, n) orthonormal x with matrix @ x = 0 up to `_ROUNDING`; no fewer rows than columns."""
+    _, size, rows = np.linalg.svd(matrix, full_matrices=False)
+    return rows[size <= _ROUNDING]
 
 
 def tensor_words(basis, axial=False):
