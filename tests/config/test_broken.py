@@ -16,6 +16,9 @@ BROKEN = {
     "key of another section": (
         "record:\n", "record:\n  «timestep: 2 fs\n", "record.timestep",
         ["unknown key", "stages[0].timestep", "another section"]),
+    "key of an inner section": (
+        "    phase: 0 deg", "    «rate: 1 rad/ps", "light[0].rate",
+        ["light[0].turning.rate", "another section"]),
     "key nobody knows": (
         "seed: 41", "«zzz: 41", "zzz", ["unknown key; expected one of title, seed"]),
     "duplicate key": (

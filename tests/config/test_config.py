@@ -1,5 +1,6 @@
 import json
 import math
+import pickle
 import subprocess
 import sys
 
@@ -169,6 +170,13 @@ def test_envelope_tables_that_cannot_be_used(tmp_path, table, words):
     assert words in message
 
 
+def test_configs_and_their_errors_survive_pickling():
+    config = parse_config(GOOD)
+    assert pickle.loads(pickle.dumps(config)) == config
+    error = ConfigError(["a:1:1: b: c", "a:2:1: d: e"])
+    assert pickle.loads(pickle.dumps(error)).lines == error.lines
+
+
 def test_differences_are_told_key_by_key():
     a = parse_config(GOOD)
     b = parse_config(GOOD, overrides=["light[0].duration=120 fs", "title=other", "output=x",
@@ -228,7 +236,7 @@ def mutated(draw):
     return text
 
 
-@settings(max_examples=400, deadline=1000)
+@settings(max_examples=400, deadline=5000)
 @given(mutated())
 def test_mutations_are_configs_or_config_errors(text):
     try:
@@ -254,7 +262,7 @@ VALUES = st.recursive(
 )  # fmt: skip
 
 
-@settings(max_examples=300, deadline=1000)
+@settings(max_examples=300, deadline=5000)
 @given(st.sampled_from(LEAVES), VALUES)
 def test_any_value_anywhere_is_a_config_or_a_config_error(key, value):
     written = yaml_text([value]).strip() if not isinstance(value, dict | list) else \

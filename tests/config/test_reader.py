@@ -128,7 +128,7 @@ def test_what_is_written_reads_back(value):
         assert math.copysign(1.0, read) == math.copysign(1.0, value)
 
 
-@settings(max_examples=300, deadline=1000, suppress_health_check=[HealthCheck.too_slow])
+@settings(max_examples=300, deadline=5000, suppress_health_check=[HealthCheck.too_slow])
 @given(st.text(max_size=200) | st.text("ab:-[]{},&*!|>'\"%@` \n\t#?<0159.e", max_size=60))
 def test_any_text_is_a_document_or_a_config_error(text):
     try:

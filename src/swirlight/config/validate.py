@@ -5,7 +5,7 @@ import typing
 from pydantic import BaseModel, ConfigDict, ValidationError, model_validator
 
 from swirlight.config.reader import path_text, shown
-from swirlight.config.values import Problems, Value, did_you_mean
+from swirlight.config.values import Problems, Value, did_you_mean, nearest
 from swirlight.errors import ConfigError
 
 
@@ -67,20 +67,18 @@ def _problems(model, document, fault):
 def _unknown_key(model, path):
     """What to say about a key that no section has, or only another one."""
     *section, key = path
-    if not isinstance(key, str):
-        return "unknown key"
-    fields = _fields(_section_at(model, section)) if _section_at(model, section) else {}
-    near = did_you_mean(key, list(fields))
-    if near:
-        return f"unknown key {near}"
+    owner = _section_at(model, section)
+    own = list(_fields(owner)) if owner else []
     elsewhere = _all_paths(model)
-    exact = [p for p in elsewhere if p[-1] == key]
-    if not exact:
-        nearest = did_you_mean(key, [p[-1] for p in elsewhere])
-        exact = [p for p in elsewhere if nearest == f'(did you mean "{p[-1]}"?)']
-    if exact:
-        return f'unknown key (did you mean "{path_text(exact[0])}", in another section?)'
-    return f"unknown key; expected one of {', '.join(fields)}"
+    names = [found[-1] for found in elsewhere]
+    near = did_you_mean(key, own)
+    if near and key not in names:
+        return f"unknown key {near}"
+    name = nearest(key, names)
+    if name is not None:
+        found = next(found for found in elsewhere if found[-1] == name)
+        return f'unknown key (did you mean "{path_text(found)}", in another section?)'
+    return f"unknown key; expected one of {', '.join(own)}"
 
 
 def _expected(model, path):

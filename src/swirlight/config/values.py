@@ -321,10 +321,16 @@ def is_path(name):
     return "/" in name or "\\" in name or name.endswith((".yaml", ".yml"))
 
 
-def did_you_mean(word, known):
-    """``did you mean "…"?`` for the nearest known word, or nothing."""
+def nearest(word, known):
+    """The known word that is most like a word, or None."""
     near = difflib.get_close_matches(word, known, n=1) if isinstance(word, str) else ()
-    return f'(did you mean "{near[0]}"?)' if near else ""
+    return near[0] if near else None
+
+
+def did_you_mean(word, known):
+    """``(did you mean "…"?)`` for the nearest known word, or nothing."""
+    near = nearest(word, known)
+    return f'(did you mean "{near}"?)' if near else ""
 
 
 def _word(words, value):
