@@ -147,12 +147,12 @@ ENVELOPES = {
 @pytest.mark.parametrize("envelope", ENVELOPES.values(), ids=ENVELOPES.keys())
 def test_resolved_pulses_have_no_net_area(envelope):
     p = terahertz(envelope=envelope, phase=0.7, ellipticity=0.3, turning=(0.4, 0.2), centre=9.0)
-    t = np.linspace(0.0, 18.0, 720_001)
+    t = np.linspace(0.0, 18.0, 72_001)
     field, _ = resolved_field([p], t)
     # a flat top may jump at its corners, which the trapezium sees to half a sample
-    assert np.abs(np.trapezoid(field, t, axis=0)).max() < 1e-4 * p.amplitude / SLOW
+    assert np.abs(np.trapezoid(field, t, axis=0)).max() < 1e-3 * p.amplitude / SLOW
     naive = (p.amplitude_at(t - 9.0) * np.exp(-1j * (SLOW * (t - 9.0) + 0.7))[:, None]).real
-    assert np.abs(np.trapezoid(naive, t, axis=0)).max() > 2e-4 * p.amplitude / SLOW
+    assert np.abs(np.trapezoid(naive, t, axis=0)).max() > 2e-3 * p.amplitude / SLOW
 
 
 @pytest.mark.parametrize("name", ["gaussian", "sech2", "rectangle", "table"])

@@ -2,11 +2,11 @@
 
 Works on any object with the attributes of interface.md's keys, in internal units (carrier as
 angular frequency in rad/ps, peak_intensity in W/cm², fluence in J/cm², angles in rad, times in
-ps); attributes that a section leaves out may be absent or None. No numba here.
+ps, `table` the two columns of an envelope table); attributes that a section leaves out may be
+absent or None. No numba here.
 """
 
 from math import cos, pi
-from pathlib import Path
 
 import numpy as np
 
@@ -17,20 +17,19 @@ from swirlight.light.pulse import Bias, Pulse, amplitude_of_intensity, intensity
 from swirlight.light.regime import check_steps, choose_coupling
 
 
-def pulses_from_config(light, system, stage=None, folder=None, libration=0.0):
+def pulses_from_config(light, system, stage=None, libration=0.0):
     """The pulses of a config's light section, in order: a tuple of Pulse.
 
     light : list of pulse sections, or None.
     system : System; decides the coupling.
     stage : the lit stage; its `timestep` [ps], when it has one, is held against the carriers.
-    folder : where relative paths of envelope tables start.
     libration : angular frequency of the fastest libration known. [rad/ps]
     Raises InputError, naming the pulse as light[n], for parts that do not go together.
     """
     pulses = []
     for n, section in enumerate(light or ()):
         try:
-            pulse = _pulse(section, system, folder, libration)
+            pulse = _pulse(section, system, libration)
             if getattr(stage, "timestep", None):
                 check_steps(pulse, stage.timestep)
         except InputError as error:
@@ -51,28 +50,7 @@ def bias_from_config(section):
     )
 
 
-def read_table(path):
-    """(times, intensities) of an envelope table: CSV of two columns, a header line allowed.
-
-    Raises InputError when the file is missing or holds anything else.
-    """
-    try:
-        lines = Path(path).read_text(encoding="utf-8-sig").splitlines()
-    except (OSError, UnicodeDecodeError) as error:
-        raise InputError(f"file: {path} cannot be read: {error}") from error
-    rows = [(n, line.replace(";", ",").split(",")) for n, line in enumerate(lines, 1)
-            if line.strip() and not line.lstrip().startswith("#")]
-    numbers = [_two_numbers(cells) for _, cells in rows]
-    if numbers and numbers[0] is None:  # a header
-        rows, numbers = rows[1:], numbers[1:]
-    for (line, cells), pair in zip(rows, numbers, strict=True):
-        if pair is None:
-            raise InputError(f"file: {path}:{line}: {','.join(cells)!r}; expected two numbers:"
-                             " time, relative intensity")
-    return tuple(p[0] for p in numbers), tuple(p[1] for p in numbers)
-
-
-def _pulse(section, system, folder, libration):
+def _pulse(section, system, libration):
     carrier = float(section.carrier)
     coupling, reason = choose_coupling(_get(section, "coupling", "auto"), carrier, system,
                                        libration)
@@ -82,7 +60,7 @@ def _pulse(section, system, folder, libration):
                          f" resolved light ({reason}) the fields of the neighbours are explicit")
     index = float(_get(section, "refractive_index", 1.0))
     ellipticity = _ellipticity(section)
-    envelope = _envelope(section, folder)
+    envelope = _envelope(section)
     if coupling == "resolved":
         envelope = envelope.resolved(carrier)
     turning, train = _get(section, "turning"), _get(section, "train")
@@ -117,10 +95,9 @@ def _ellipticity(section):
     return float(ellipticity)
 
 
-def _envelope(section, folder):
-    name, file = _get(section, "envelope", "gaussian"), _get(section, "file")
-    table = None if file is None else read_table(Path(folder or ".") / file)
-    return make_envelope(name, _get(section, "duration"), _get(section, "rise"), table)
+def _envelope(section):
+    return make_envelope(_get(section, "envelope", "gaussian"), _get(section, "duration"),
+                         _get(section, "rise"), _get(section, "table"))
 
 
 def _amplitude(section, envelope, index, ellipticity):
@@ -139,11 +116,3 @@ def _get(section, name, default=None):
     """An attribute that may be absent or None."""
     value = None if section is None else getattr(section, name, None)
     return default if value is None else value
-
-
-def _two_numbers(cells):
-    try:
-        first, second = (float(cell) for cell in cells)
-    except ValueError:
-        return None
-    return first, second

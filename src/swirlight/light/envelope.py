@@ -6,7 +6,7 @@ means one class here and its line in `ENVELOPES`.
 
 Averaged light needs f only. Carrier-resolved light is E = −dA/dt and needs a, da/dt and
 d²a/dt²: `resolved` returns the envelope that has them (rectangles and tables jump, so theirs
-rise and fall over half a cycle of the carrier).
+rise and fall over half a cycle of the carrier, inside their length).
 
 Times in ps; no numba here, `swirlight check` needs this module.
 """
@@ -21,6 +21,7 @@ from swirlight.errors import InputError
 # Below this fraction of its peak intensity a pulse counts as absent (1e-12 of its amplitude):
 # Gaussians have no end, but copies of a train and dark stretches can then be skipped exactly.
 FAINT = 1e-24
+MOST_KNOTS = 200_000  # of a smoothed table
 
 
 @dataclass(frozen=True)
@@ -173,37 +174,29 @@ class Rectangle(Envelope):
         return 0.5 * self.duration, 0.5 * self.duration
 
     def resolved(self, carrier):
-        return RampedRectangle(self.duration, pi / carrier)
+        return RampedRectangle(self.duration, min(pi / carrier, 0.5 * self.duration))
 
 
 @dataclass(frozen=True)
 class RampedRectangle(Envelope):
-    """A rectangle whose *amplitude* rises and falls as sin² over `rise`: E stays continuous.
+    """A rectangle whose *amplitude* rises and falls as sin², `rise` long, inside its length.
 
-    τ is kept: the amplitude passes 1/√2 at ±τ/2.
+    The whole length stays `duration`, so the light still fits where the rectangle did; at half
+    the maximum of f it is 1.272 ramps shorter. E is continuous.
     """
 
     rise: float = 0.0
 
     name = "rectangle"
-    half_way = 2.0 / pi * asin(0.5**0.25)  # fraction of the ramp at which f = ½
-
-    def __post_init__(self):
-        if self.duration < 2.0 * (1.0 - self.half_way) * self.rise:
-            raise InputError(
-                f"a resolved rectangle of {self.duration:g} ps is too short for two ramps of half"
-                f" a cycle ({self.rise:g} ps each): it has no plateau left"
-            )
 
     @property
     def fluence_factor(self):
-        """∫f dt / τ: plateau, and 3/8 of each ramp."""
-        plateau = self.duration - 2.0 * (1.0 - self.half_way) * self.rise
-        return (plateau + 0.75 * self.rise) / self.duration
+        """∫f dt / duration: the plateau, and 3/8 of each ramp."""
+        return 1.0 - 1.25 * self.rise / self.duration
 
     def _ramp(self, t):
-        half = 0.5 * self.duration + self.half_way * self.rise
-        return np.clip((half - np.abs(np.asarray(t, float))) / self.rise, 0.0, 1.0)
+        beyond = 0.5 * self.duration - np.abs(np.asarray(t, float))
+        return np.clip(beyond / self.rise, 0.0, 1.0)
 
     def intensity(self, t):
         return np.square(self.amplitude(t))
@@ -219,8 +212,7 @@ class RampedRectangle(Envelope):
         return np.stack([self.amplitude(t), slope, curve])
 
     def reach(self, level):
-        ramp = self.rise * 2.0 / pi * asin(level**0.25)
-        side = 0.5 * self.duration + self.half_way * self.rise - ramp
+        side = 0.5 * self.duration - self.rise * asin(level**0.25) * 2.0 / pi
         return side, side
 
 
@@ -276,9 +268,10 @@ class Table(Envelope):
 
 @dataclass(frozen=True)
 class SmoothTable(Envelope):
-    """A table's amplitude averaged over half a cycle, as a cubic spline of 40 knots a cycle.
+    """A table's amplitude for resolved light: smoothed and ramped over half a cycle.
 
-    The spline is flat and zero at both ends, so A and dA/dt are continuous everywhere.
+    A cubic spline of 40 knots a cycle, flat and zero at both ends of the table, so A and dA/dt
+    are continuous everywhere.
     """
 
     times: tuple[float, ...] = ()
@@ -316,17 +309,21 @@ class SmoothTable(Envelope):
 
 
 def _smoothed(table, window):
-    """The table's amplitude averaged with a half sine `window` long (half a cycle)."""
-    step = window / 20.0
-    reach = 0.5 * window
-    knots = int(np.ceil((table.times[-1] - table.times[0] + 2.0 * reach) / step)) + 1
-    t = np.linspace(table.times[0] - reach, table.times[-1] + reach, knots)
-    if knots > 200_000:
-        raise InputError(f"a resolved table of {knots // 40} cycles is too long to be smoothed")
+    """The table's amplitude averaged with a half sine `window` long (half a cycle), and ramped
+    by sin² over as much at both ends, inside its length."""
+    begin, end = table.times[0], table.times[-1]
+    knots = int(np.ceil(20.0 * (end - begin) / window)) + 1
+    if knots > MOST_KNOTS:
+        raise InputError(f"a resolved table of {knots // 40} cycles of the carrier is too long;"
+                         f" at most {MOST_KNOTS // 40}")
+    t = np.linspace(begin, end, max(knots, 41))
     offsets, weights = np.polynomial.legendre.leggauss(32)
     weights = weights * np.cos(0.5 * pi * offsets)
     weights /= weights.sum()
-    a = sum(w * table.amplitude(t + reach * x) for x, w in zip(offsets, weights, strict=True))
+    a = sum(w * table.amplitude(t + 0.5 * window * x)
+            for w, x in zip(weights, offsets, strict=True))
+    ramp = np.minimum(t - begin, end - t) / min(window, 0.5 * (end - begin))
+    a *= np.square(np.sin(0.5 * pi * np.clip(ramp, 0.0, 1.0)))
     a[0] = a[-1] = 0.0
     return SmoothTable(table.duration, tuple(t.tolist()), tuple((a / a.max()).tolist()))
 
@@ -361,7 +358,7 @@ def make_envelope(name, duration, rise=None, table=None):
         raise InputError("rise: a flat-top envelope needs it, for example 'rise: 0.2 ps', and"
                          " no other has it")
     if (table is None) == (name == "table"):
-        raise InputError("file: an envelope table needs it, and no other has it")
+        raise InputError("file: a table envelope needs it, and no other has it")
     if name == "flat-top":
         return FlatTop(duration, rise)
     if name == "table":

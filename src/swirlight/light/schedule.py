@@ -83,9 +83,12 @@ def _copies(pulses, times):
     low, high = times.min(initial=np.inf), times.max(initial=-np.inf)
     for pulse in pulses:
         before, after = pulse.envelope.reach(FAINT)
-        for centre in pulse.centres:
-            if low <= centre + after and high >= centre - before:
-                yield pulse, float(centre)
+        first, last = 0, pulse.count - 1
+        if last > 0:  # of a long train only the copies near the times are visited
+            first = max(first, int(np.ceil((low - after - pulse.centre) / pulse.period - 1e-9)))
+            last = min(last, int(np.floor((high + before - pulse.centre) / pulse.period + 1e-9)))
+        for n in range(first, last + 1):
+            yield pulse, pulse.centre + pulse.period * n
 
 
 def coherency_rows(amplitude):
