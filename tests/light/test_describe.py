@@ -8,7 +8,7 @@ import pytest
 from swirlight.errors import InputError
 from swirlight.light.describe import achieved, describe, describe_beats, end_of_light
 from swirlight.light.envelope import FlatTop, Gaussian, Rectangle, Sech2
-from swirlight.light.limits import sample_statements, strength_for
+from swirlight.light.limits import sample_statements, strength_for, which_field
 from swirlight.light.pulse import Pulse, amplitude_of_intensity, intensity_of_amplitude
 from swirlight.light.regime import rotation_rate
 from swirlight.species.body import OpticalResponse
@@ -168,3 +168,8 @@ def test_statements_on_the_sample():
     assert any("rectification without absorption" in s
                for s in sample_statements((pulse(),), sample(species(bare))))
     assert sample_statements((terahertz(),), sample(signed(1, "right"))) == []
+
+
+def test_which_field_a_resolved_or_static_one_is():
+    assert which_field("mesh-ewald") is None and which_field("none") is None
+    assert "ε_RF" in which_field("reaction-field") and "Ewald" in which_field("damped-shifted")

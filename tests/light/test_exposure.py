@@ -60,7 +60,7 @@ def test_every_exposed_pulse_is_mirrored_in_one_plane():
 
 
 def test_mirror_of_the_mirror_is_the_light_as_written():
-    pulses = (pulse(azimuth=0.3), pulse(azimuth=1.0, ellipticity=0.1))
+    pulses = (pulse(azimuth=0.3), pulse(azimuth=1.0, ellipticity=0.1), pulse(direction="x"))
     twice = mirrored(mirrored(pulses))
     np.testing.assert_allclose(group_amplitude(twice, TIMES), group_amplitude(pulses, TIMES),
                                atol=1e-14)

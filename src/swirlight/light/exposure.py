@@ -10,8 +10,6 @@ the bias field and pulses with `in_kinds: same` stay.
 from dataclasses import replace
 from math import cos, pi, sin
 
-import numpy as np
-
 from swirlight.light.polarisation import transverse_axes
 
 
@@ -37,9 +35,11 @@ def _mirror(pulse, first):
             azimuth=first.azimuth + (first.azimuth - pulse.azimuth),
             turning=(-rate, -acceleration),
         )
+    if pulse.mirror is not None:  # a second reflection in the same plane undoes the first
+        return replace(pulse, mirror=None)
     e1, e2 = transverse_axes(first.direction)
     normal = cos(first.azimuth) * e2 - sin(first.azimuth) * e1
-    return replace(pulse, mirror=tuple(np.asarray(normal).tolist()))
+    return replace(pulse, mirror=tuple(normal.tolist()))
 
 
 def dark(pulses):

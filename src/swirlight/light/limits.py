@@ -95,6 +95,20 @@ def sample_statements(pulses, system):
     return list(dict.fromkeys(said))
 
 
+def which_field(electrostatics):
+    """What a resolved or static field is inside the sample, in words; None where it is simple.
+
+    electrostatics : as in Interactions. With Ewald sums (conducting boundary) the applied field
+    is the Maxwell field in the sample.
+    """
+    return {
+        "reaction-field": "with a reaction field the Maxwell field in the sample is the applied"
+                          " one times (2 ε_RF + 1)/(2 ε_RF + ε(ω))",
+        "damped-shifted": "with the damped shifted force no boundary is defined: which field the"
+                          " sample sees is known only by comparison with an Ewald sum",
+    }.get(electrostatics)
+
+
 def _balanced(n, blocks, counts):
     """Whether as many bodies carry −g as carry the g of species n."""
     g = blocks[n].gyration
