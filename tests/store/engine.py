@@ -9,28 +9,25 @@ import sys
 
 import numpy as np
 
-from swirlight.species.body import ATOM, GENERAL, Species
 from swirlight.state import State
-from swirlight.store.describe import describe_species
-from swirlight.store.layout import Element, Header
+from swirlight.store.layout import Element, Header, Labelled
 from swirlight.store.writer import TrajectoryWriter, load_checkpoint
 
 BOX = np.array([2.0, 2.5, 3.0])
 BODIES, STEPS, SEGMENT = 7, 40, 16
-TOP = Species(
-    name="leaning top (invented)", source="invented for demonstration", labels=("A", "B", "C"),
-    sites=np.array([[0.1, 0.0, 0.0], [-0.05, 0.08, 0.0], [-0.05, -0.08, 0.02]]),
-    mass=np.array([14.0, 16.0, 12.0]), charge=np.array([0.2, -0.3, 0.1]),
-    sigma=np.array([0.3, 0.31, 0.32]), epsilon=np.array([0.5, 0.6, 0.7]),
-    inertia=np.array([0.1, 0.2, 0.3]), freedom=GENERAL, frame=np.eye(3),
-)
-ATOMS = Species(
-    name="argon", source="from memory", labels=("Ar",), sites=np.zeros((1, 3)),
-    mass=np.array([39.948]), charge=np.zeros(1), sigma=np.array([0.34]), epsilon=np.array([0.99]),
-    inertia=np.zeros(3), freedom=ATOM, frame=np.eye(3),
-)
-SPECIES = (TOP, ATOMS)
+SPECIES = {  # labels and sites in the body frame [nm]
+    "leaning top (invented)": (["A", "B", "C"], np.array(
+        [[0.1, 0.0, 0.0], [-0.05, 0.08, 0.0], [-0.05, -0.08, 0.02]])),
+    "argon": (["Ar"], np.zeros((1, 3))),
+}
 SPECIES_OF = np.array([0] * 5 + [1] * 2)
+
+
+def describe(labels, sites):
+    numbers = np.linspace(0.1, 0.3, len(labels))
+    return {"labels": labels, "sites": Labelled(sites, "nm", {"frame": "body"}),
+            "mass": Labelled(numbers, "g mol-1"), "charge": Labelled(numbers, "C"),
+            "sigma": Labelled(numbers, "nm"), "epsilon": Labelled(numbers, "kJ mol-1")}
 
 
 def header(first_step=100, bodies=BODIES, **changes):
@@ -45,10 +42,10 @@ def header(first_step=100, bodies=BODIES, **changes):
     )
     settings = dict(
         author="nobody in particular", timestep=0.002, first_step=first_step, box=BOX,
-        species=np.resize(SPECIES_OF, bodies), species_names=tuple(s.name for s in SPECIES),
+        species=np.resize(SPECIES_OF, bodies), species_names=tuple(SPECIES),
         mass=np.resize(SPECIES_OF, bodies) + 1.0, elements=elements,
         parameters={"config": "title: ångström\n", "seed": 41,
-                    "species": describe_species(SPECIES)},
+                    "species": {name: describe(*kind) for name, kind in SPECIES.items()}},
     )
     return Header(**{**settings, **changes})
 
@@ -83,7 +80,7 @@ def frames(state, elements, first_step):
     return {name: value for name, value in every.items() if name in due}
 
 
-def run(workdir, final, steps=STEPS, segment=SEGMENT, checkpoint_every=6, stop=None, **changes):
+def run(workdir, final, steps=STEPS, segment=SEGMENT, checkpoint_every=9, stop=None, **changes):
     """Begin or go on, until the final file is there; with `stop`, only to that step."""
     if pathlib.Path(final).exists():
         return

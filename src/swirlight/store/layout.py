@@ -149,7 +149,7 @@ def write_text_attribute(item, name, text):
 def chunk_shape(element, rows, final):
     """Chunks of near equal size, none larger than the format's, for `rows` frames."""
     if element.group == "observables" or not element.shape:
-        return (_even(rows, TOTALS_CHUNK), *element.shape)
+        return (_even(rows, TOTALS_CHUNK), *(max(length, 1) for length in element.shape))
     frames, bodies = FINAL_CHUNK if final else SEGMENT_CHUNK
     return (_even(rows, frames), _even(element.shape[0], bodies), *element.shape[1:])
 
@@ -240,7 +240,7 @@ def _write_element(file, header, element, first_row, rows, final):
     value = group.create_dataset(
         "value",
         shape=(rows, *element.shape),
-        maxshape=(None, *element.shape),
+        maxshape=(None, *(length or None for length in element.shape)),
         chunks=chunk_shape(element, rows, final),
         dtype=element.dtype,
         fletcher32=True,

@@ -73,10 +73,9 @@ class Parts:
                 continue
             first = wanted[done] - int(start)
             source = slice(first, first + (count - 1) * frames.step + 1, frames.step)
+            dataset = self.files[path][self.dataset]
             try:
-                self.files[path][self.dataset].read_direct(
-                    out, np.s_[(source, *rest)], np.s_[done : done + count]
-                )
+                dataset.read_direct(out, (source, *rest), np.s_[done : done + count])
             except OSError as error:
                 raise RunError(
                     f"{path}:/{self.dataset}: damaged: frames {source.start} to {source.stop - 1}"

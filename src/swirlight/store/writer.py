@@ -13,6 +13,7 @@ Commit rule  a segment counts when a checkpoint counts it; everything else is wh
 """
 
 import contextlib
+import functools
 import hashlib
 import math
 import os
@@ -110,7 +111,7 @@ class TrajectoryWriter:
         another process writes here.
         """
         writer = cls(workdir, header, segment_steps)
-        if checkpoint.layout != writer._fingerprint():
+        if checkpoint.layout != writer._fingerprint:
             raise RunError(f"{workdir}: this was begun with other bodies, elements or strides")
         with writer._reporting():
             writer._lock.acquire()
@@ -165,7 +166,7 @@ class TrajectoryWriter:
             pending = {name: self._frames(name) for name in self._elements}
             write_checkpoint(
                 self.workdir / "checkpoints",
-                Checkpoint(step, payload, self._segments, self._rows, pending, self._fingerprint()),
+                Checkpoint(step, payload, self._segments, self._rows, pending, self._fingerprint),
             )
         self._kept_step = step
 
@@ -209,6 +210,7 @@ class TrajectoryWriter:
         self._segments += 1
         self._pending = dict.fromkeys(self._elements, 0)
 
+    @functools.cached_property
     def _fingerprint(self):
         """What must not change between the parts of one trajectory."""
         nothing = dict.fromkeys(self._elements, 0)
@@ -291,7 +293,7 @@ def _read_back(path):
     with h5py.File(path, "r", locking=False) as file:
 
         def read(_, item):
-            if isinstance(item, h5py.Dataset) and item.chunks:
+            if isinstance(item, h5py.Dataset) and item.chunks and item.size:
                 for chunk in item.iter_chunks():
                     item[chunk]
 
