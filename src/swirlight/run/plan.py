@@ -62,7 +62,7 @@ def examine(config):
     _named(config, "forces.cutoff", check_box, box, system.interactions.cutoff, system.bodies)
     _named(config, "forces.electrostatics", _require_neutral, system)
     last = config.stages[-1]
-    pulses = _named(config, "light", pulses_from_config, config.light, system, last, config.folder)
+    pulses = _named(config, "light", pulses_from_config, config.light, system, last)
     for n, pulse in enumerate(pulses):
         for species in system.species:
             _named(config, f"light[{n}].carrier", choose_response, species, pulse.carrier,
