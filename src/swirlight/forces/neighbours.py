@@ -33,7 +33,8 @@ class Kind:
     first, count : which bodies; types, local : (sites,) the interacting sites, by type and by
     place in the body; radius : of the outermost [nm]; central : a single site in the centre.
     body : (count,) in the order of the records; site : (count, sites) rows of the lever arms;
-    place : (count, 3) wrapped, when the outer list was made; reference : (count, sites, 3)
+    place : (count, 3) wrapped, when the outer list was made, and image : in which box that
+    was; reference : (count, sites, 3)
     where the sites were when the inner list was made.
     """
 
@@ -46,6 +47,7 @@ class Kind:
     body: np.ndarray | None = None
     site: np.ndarray | None = None
     place: np.ndarray | None = None
+    image: np.ndarray | None = None
     records: np.ndarray | None = None
     reference: np.ndarray | None = None
 
@@ -216,8 +218,8 @@ class Neighbours:
         """Write all records; the largest distance of a site from the inner list's places."""
         furthest = 0.0
         for kind in self.kinds:
-            kernels.place(position, self.lever, kind.body, kind.site, box, self.repeat,
-                          kind.records, kind.centres, kind.reference, self.moved)
+            kernels.place(position, self.lever, kind.body, kind.site, kind.image, box,
+                          self.repeat, kind.records, kind.centres, kind.reference, self.moved)
             furthest = max(furthest, float(self.moved.max()))
             if not np.isfinite(furthest):
                 raise RunError("positions or orientations are no longer finite numbers")
@@ -260,6 +262,7 @@ class Neighbours:
         kind.body = bodies[order]
         kind.site = self.system.site_start[kind.body][:, None] + kind.local
         kind.place = grid.wrap(place[order])
+        kind.image = np.floor(place[order] / self.box)
         shape = (kind.count * int(np.prod(self.repeat)), kind.words)
         kind.records = np.zeros(shape, self.dtype)
         kind.reference = np.zeros((*kind.site.shape, 3))

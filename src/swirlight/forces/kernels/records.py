@@ -23,10 +23,12 @@ def record_words(sites):
 
 
 @kernel(parallel=True)
-def place(position, lever, body, site, edge, repeat, records, centres, reference, moved):
+def place(position, lever, body, site, image, edge, repeat, records, centres, reference, moved):
     """Write the records of bodies `body` (n,), and how far their sites are from `reference`.
 
     site : (n, sites) rows of `lever`; edge : (3,) of the unrepeated box; repeat : (3,).
+    image : (n, 3) box of each body when the outer list was made: a body that has since crossed
+        a face keeps its place among the copies that the list's entries mean.
     records : (n repeat_x repeat_y repeat_z, words); centres : the same memory as int32.
     reference : (n, sites, 3) places of the sites; moved : (CHUNKS,) largest squared distance.
     """
@@ -44,8 +46,8 @@ def place(position, lever, body, site, edge, repeat, records, centres, reference
                 if distance2 > furthest or distance2 != distance2:  # NaN must come through
                     furthest = distance2
             for k in range(3):
-                fraction = position[b, k] / edge[k]
-                _set_centre(records, centres, i, k, (fraction - np.floor(fraction)) / repeat[k])
+                fraction = (position[b, k] / edge[k] - image[i, k]) / repeat[k]
+                _set_centre(records, centres, i, k, fraction - np.floor(fraction))
             copy = i
             for z in range(repeat[2]):
                 for y in range(repeat[1]):
