@@ -6,10 +6,11 @@ originals were edited or lost, and on another machine.
 
 import pathlib
 
-import yaml
+
 
 from swirlight import __version__
 from swirlight.config import load_config
+from swirlight.config.reader import yaml_text
 from swirlight.config.values import is_path
 from swirlight.errors import InputError
 from swirlight.run.stop import StopFile
@@ -78,7 +79,7 @@ def create(config, into=None):
     for path in (folder.inputs, folder.starts, folder.work):
         make_folder(path)
     _copy_inputs(config, resolved, folder)
-    text = yaml.safe_dump(resolved, sort_keys=False, allow_unicode=True, width=100)
+    text = yaml_text(resolved)
     head = f"# resolved by swirlight {__version__}: every default written out\n"
     write_bytes(folder.config_file, (head + text).encode())
     return folder

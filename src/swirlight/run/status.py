@@ -19,7 +19,7 @@ def read_status(path):
     folder = RunFolder(path)
     config = folder.config()
     system = build_system(config)
-    pulses = pulses_from_config(config.light, system, config.stages[-1], config.folder)
+    pulses = pulses_from_config(config.light, system, config.stages[-1])
     names = [e.name for e in list_exposures(config, pulses)]
     unlit = ["equilibrium"] * (len(config.stages) > 1)
     under_way, failed = {}, {}

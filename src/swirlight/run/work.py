@@ -32,7 +32,7 @@ class Work:
         self.config = folder.config()
         self.system = build_system(self.config)
         self.pulses = pulses_from_config(
-            self.config.light, self.system, self.config.stages[-1], self.config.folder
+            self.config.light, self.system, self.config.stages[-1]
         )
         self.bias = bias_from_config(self.config.bias_field)
         self.beam = beam(self.pulses) if self.pulses else np.array([0.0, 0.0, 1.0])
