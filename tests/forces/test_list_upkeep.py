@@ -27,7 +27,7 @@ def test_bodies_that_cross_faces_are_not_lost(ratio, precision):
     random = np.random.default_rng(11)
     zeros = np.zeros((bodies, 3))
     state = State(lattice_positions(bodies, box, random), draw_orientations(bodies, random),
-                  zeros, zeros, box, random=random)
+                  zeros, zeros.copy(), box, random=random)
     kept = ForceField(system, box)
     remove_overlaps(system, state, kept)
     draw_motion(system, state)
