@@ -1,4 +1,4 @@
-"""Reading: like NumPy, lazily, and the same from segments, the final file, and across its making."""
+"""Reading: like NumPy, lazily, and the same from segments, from the final file and in between."""
 
 import json
 import pickle

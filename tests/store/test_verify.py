@@ -73,6 +73,10 @@ def not_a_number(f):
     f[f"{BODIES}/torque/value"][3, 2, 1] = np.nan
 
 
+def not_a_total(f):
+    f["observables/temperature/value"][3] = np.inf
+
+
 def long_quaternion(f):
     f[f"{BODIES}/orientation/value"][1, 1] *= 1.001
 
@@ -117,6 +121,7 @@ BREAKS = [
     (late, "/temperature/value: begins at step 104; others at step 100"),
     (no_checksums, "/torque/value: must be chunked and have Fletcher-32 checksums"),
     (not_a_number, "/torque/value frames 0 to 5: values that are not finite"),
+    (not_a_total, "/temperature/value frames 0 to 20: values that are not finite"),
     (long_quaternion, "/orientation/value: not unit quaternions: off by 1.0e-03"),
     (outside, "/position/value: positions outside of the box"),
     (without("parameters"), "/parameters/swirlight: is missing"),
@@ -133,6 +138,12 @@ def test_every_broken_rule_is_found_and_named(copy, damage, message):
     found = verify(copy)
     assert any(message in text for text in found), found
     assert all(text.startswith(f"{copy}:/") for text in found)
+
+
+def test_a_total_that_the_sample_does_not_have_may_be_nan(copy):
+    with h5py.File(copy, "r+") as file:
+        file["observables/temperature/value"][...] = np.nan
+    assert verify(copy) == []
 
 
 def test_a_flipped_bit_in_any_chunk_is_found(copy):

@@ -8,6 +8,7 @@ import pickle
 import subprocess
 import sys
 import textwrap
+import threading
 
 import h5py
 import numpy as np
@@ -143,6 +144,17 @@ def test_a_second_writer_is_refused_clearly(tmp_path):
     first.close()
     assert not locked(tmp_path / "w") and not locked(tmp_path / "nowhere")
     TrajectoryWriter.create(tmp_path / "w", engine.header(), 16).close()
+
+
+def test_asking_whether_a_folder_is_locked_disturbs_no_writer(tmp_path):
+    (tmp_path / ".lock").touch()
+    stop = threading.Event()
+    asking = threading.Thread(target=lambda: [locked(tmp_path) for _ in iter(stop.is_set, True)])
+    asking.start()
+    for _ in range(200):
+        FolderLock(tmp_path).acquire().release()
+    stop.set()
+    asking.join()
 
 
 def test_two_processes_cannot_write_at_once(tmp_path):

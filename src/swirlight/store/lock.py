@@ -4,9 +4,13 @@ import fcntl
 import os
 import pathlib
 import socket
+import time
 
 from swirlight.errors import InputError
 from swirlight.store.durable import make_folder
+
+# `locked` holds the lock for an instant to find out: a writer asks more than once.
+ATTEMPTS, PAUSE = 10, 0.02  # s
 
 
 class FolderLock:
@@ -26,26 +30,23 @@ class FolderLock:
     def acquire(self):
         """Take the lock. Raises InputError, saying who holds it, when another writer does."""
         make_folder(self.folder)
-        path = self.folder / self.NAME
-        while True:
+        path, holder = self.folder / self.NAME, ""
+        for _ in range(ATTEMPTS):
             descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o666)
             try:
                 fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
                 # The folder may have been removed in between: then the name is not this file's.
-                mine = _same_file(descriptor, path)
+                if _same_file(descriptor, path):
+                    break
             except BlockingIOError:
                 holder = os.pread(descriptor, 200, 0).decode(errors="replace").strip()
-                os.close(descriptor)
-                raise InputError(
-                    f"{self.folder}: another process is writing here"
-                    f" ({holder or 'it did not say which'}); wait for it, or end it first"
-                ) from None
-            except BaseException:
-                os.close(descriptor)
-                raise
-            if mine:
-                break
             os.close(descriptor)
+            time.sleep(PAUSE)
+        else:
+            raise InputError(
+                f"{self.folder}: another process is writing here"
+                f" ({holder or 'it did not say which'}); wait for it, or end it first"
+            )
         os.ftruncate(descriptor, 0)
         os.pwrite(descriptor, f"process {os.getpid()} on {socket.gethostname()}".encode(), 0)
         self._descriptor = descriptor
