@@ -118,6 +118,8 @@ def test_achieved_values_of_resolved_light():
     assert value(found, "achieved largest field") == pytest.approx(
         value(found, "largest field"), rel=0.01)
     assert value(found, "steps per fastest rotation", "stages[1]") > 1000
+    assert value(found, "steps per cycle") == pytest.approx(500.0)  # of 2 fs
+    assert value(found, "steps per duration") == pytest.approx(2000.0)
     assert value(found, "dipolar absorption") == "unknown before the run"
     assert value(found, "dipolar heating") == "unknown before the run"
 

@@ -15,7 +15,7 @@ START_NUMBERS = 13  # per body and start file: position, orientation, velocity, 
 MEBIBYTE = 2.0**20
 
 # Memory of a process, measured: the interpreter with everything loaded, and per-part sizes.
-PROCESS_BYTES = 250e6
+PROCESS_BYTES = 290e6
 BODY_BYTES, SITE_BYTES = 1500.0, 400.0
 LIST_SHARE = 1.6  # entries of the neighbour list per pair inside the cut-off: skin and padding
 MESH_SPACING = 0.1  # nm, where it is chosen automatically

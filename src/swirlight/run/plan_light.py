@@ -5,7 +5,7 @@ import numpy as np
 from swirlight.light.describe import ELECTRON_VOLT, describe, describe_beats
 from swirlight.light.exposure import exposed
 from swirlight.light.limits import VISIBLE, sample_statements, strength_for
-from swirlight.light.regime import check_steps
+from swirlight.light.regime import ENOUGH_STEPS, check_steps
 from swirlight.light.response import choose_response
 from swirlight.run.plan_figures import absorbed_spin, photon_over_kt
 from swirlight.run.plan_page import Notice, Row, Section, quantity
@@ -29,7 +29,11 @@ def pulses(subject):
             Row("ħω/kT", float(photon_over_kt(pulse.carrier, temperature))),
             Row("s3", float(pulse.s3), "", "sin 2χ, 1 for positive helicity"),
             Row("in kinds", pulse.in_kinds),
+            Row("steps per duration", pulse.envelope.duration / subject.lit.timestep),
         ]
+        if pulse.coupling == "resolved":
+            steps = 2.0 * np.pi / (pulse.carrier * subject.lit.timestep)
+            rows.append(Row("steps per cycle", steps, "", f"{ENOUGH_STEPS} are enough"))
         yield Section(key, tuple(rows))
         warnings = list(said.warnings)
         if pulse.coupling == "resolved" and said.figures["cycles per duration"][0] < 1.0:
