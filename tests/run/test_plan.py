@@ -8,6 +8,7 @@ import time
 import numpy as np
 import pytest
 
+import swirlight
 from swirlight.config import load_config
 from swirlight.errors import ConfigError, InputError
 from swirlight.run.plan import check_config
@@ -323,6 +324,11 @@ def test_text_form():
     for words in ("electrostriction", "vibration", "ionisation", "depletion", "revivals"):
         assert any(words in line for line in OUTSIDE) and words in text
     assert max(map(len, text.splitlines())) <= 100
+
+
+def test_public_name():
+    found = swirlight.check(config())
+    assert isinstance(found, Plan) and str(found) == str(plan())
 
 
 def test_rows_that_are_not_finite_become_null():

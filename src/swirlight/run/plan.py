@@ -17,7 +17,7 @@ from swirlight.run.plan_page import Notice, Plan, Row, Section
 from swirlight.run.plan_subject import Subject
 from swirlight.run.sample import box_edges, build_system
 
-__all__ = ["Notice", "Plan", "Row", "Section", "check_config"]
+__all__ = ["Notice", "Plan", "Row", "Section", "check", "check_config"]
 
 PARTS = (
     echo,
@@ -50,6 +50,9 @@ def check_config(config):
             (warnings if isinstance(found, Notice) else sections).append(found)
     warnings = tuple(dict.fromkeys(warnings))  # several pulses may say the same
     return Plan(config.title, tuple(sections), warnings, lit=bool(subject.pulses))
+
+
+check = check_config  # as the package calls it
 
 
 def examine(config):

@@ -108,7 +108,8 @@ def expected_rate(load):
         last = list(rates.values())[-1]
         return Rate(load.table * last["steps_per_second"] / last["table"],
                     "scaled from the last rate measured on this machine, for another system")
-    return Rate(load.table, "from a table, good to a factor of 2: nothing was measured on this machine yet")
+    return Rate(load.table, "from a table, good to a factor of 2: nothing was measured on this"
+                            " machine yet")
 
 
 def _read():
