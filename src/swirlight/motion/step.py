@@ -102,11 +102,13 @@ class Mover:
         return sum(kinetic_energies(self.system, state)) + self.load.energy
 
     def field_at_present(self, name):
-        """A row of the present FieldBlock: amplitude, conjugate_product, field or bias.
+        """(3,) row of the present FieldBlock: amplitude, conjugate_product, field or bias.
 
-        None without light and bias field.
+        Zero without light and bias field.
         """
-        return None if self.light is None else getattr(self._block, name)[self._count % BLOCK]
+        if self.light is None:
+            return np.zeros(3)
+        return getattr(self._block, name)[self._count % BLOCK]
 
     def energy_residual(self, state):
         """ΔH0 since the ledger was opened, less all work entered there. [u nm²/ps²]"""

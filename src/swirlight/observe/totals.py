@@ -54,7 +54,7 @@ class Total:
     name : also of the element in the file.
     read : (Instant) -> number or array of `shape`, internal units.
     unit, factor, attributes : as of a Vector.
-    lit : whether it exists only where light or a bias field acts in the run.
+    lit : whether it says something only where light or a bias field acts; 0 without.
     """
 
     name: str
@@ -169,12 +169,14 @@ _ALL = (
                                                  "per": "body"}),
     Total("orientation_along_beam", orientation_along_beam, None, 1.0, (),
           {"of": "cosine of body z with the beam", "per": "body"}),
-    Total("light_energy", lambda n: n.light.light_energy, "kJ mol-1", KJ, (), BOX, lit=True),
-    Total("bias_energy", lambda n: n.light.bias_energy, "kJ mol-1", KJ, (), BOX, lit=True),
-    Total("light/amplitude", amplitude, "V m-1", VOLTS, (3, 2), {"of": "real, imaginary part"},
-          lit=True),
+    Total("light_energy", lambda n: n.mover.load.light_energy, "kJ mol-1", KJ, (), BOX, lit=True),
+    Total("bias_energy", lambda n: n.mover.load.bias_energy, "kJ mol-1", KJ, (), BOX, lit=True),
+    Total("light/amplitude", amplitude, "V m-1", VOLTS, (3, 2),
+          {"of": "real and imaginary part; the first group of averaged pulses that beat, or, when"
+                 " all are resolved, the first carrier"}, lit=True),
     Total("light/conjugate_product", lambda n: n.mover.field_at_present("conjugate_product"),
-          "V+2 m-2", VOLTS**2, (3,), lit=True),
+          "V+2 m-2", VOLTS**2, (3,),
+          {"of": "sum over pulses that do not beat"}, lit=True),
     Total("light/field", lambda n: n.mover.field_at_present("field"), "V m-1", VOLTS, (3,),
           {"of": "carrier-resolved light"}, lit=True),
 )
