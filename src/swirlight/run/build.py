@@ -92,7 +92,8 @@ class Scene:
         """
         state = self.state
         check_box(state.box, self.system.interactions.cutoff, self.system.bodies)
-        mover = Mover(self.system, ForceField(self.system, state.box), self.light, 1e-3, None)
+        mover = Mover(self.system, ForceField(self.system, state.box), self.light, 1e-3, None,
+                      remove_momentum=False)
         mover.begin(state, units.parse_quantity(time, "time"), energies=True)
         load, out = mover.load, 1.0 / units.KJ_PER_MOL
         terms = {name: out * value for name, value in load.field.terms.items()}
