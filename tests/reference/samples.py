@@ -27,16 +27,13 @@ def body(name, sites, mass, charge, sigma, epsilon, mixing="lorentz-berthelot"):
     )
 
 
-FIVE = body(  # a neutral body of five sites, all charged
+FIVE = body(  # a cation, all five sites charged
     "five", [[0, 0, 0], [0.11, 0.01, -0.02], [-0.03, 0.12, 0.04], [-0.05, -0.07, 0.13],
              [0.02, -0.05, -0.11]],
-    [14.0, 16.0, 19.0, 12.0, 1.0], [0.40, -0.35, 0.15, 0.10, -0.30],
+    [14.0, 16.0, 19.0, 12.0, 1.0], [0.55, -0.25, 0.40, 0.35, -0.05],
     [0.30, 0.28, 0.27, 0.29, 0.22], [0.40, 0.55, 0.25, 0.80, 0.10],
 )
-CATION = body("cation", [[0, 0, 0], [0.1, 0, 0]], [15.0, 7.0], [0.7, 0.3], [0.26, 0.24],
-              [0.5, 0.2])
-ANION = body("anion", [[0, 0, 0], [0, 0.12, 0]], [17.0, 9.0], [-1.3, 0.3], [0.30, 0.2],
-             [0.5, 0.2])
+TWO = body("two", [[0, 0, 0], [0, 0.12, 0]], [17.0, 9.0], [-1.2, 0.2], [0.30, 0.26], [0.5, 0.2])
 DUMBBELL = body("dumbbell", [[0, 0, 0], [0, 0, 0.11]], [14.0, 15.0], [0.25, -0.25], [0.3, 0.31],
                 [0.3, 0.4])
 
@@ -56,11 +53,11 @@ def lattice(rng, count, box, jitter):
     return (place + rng.integers(-1, 2, (count, 3))) * box
 
 
-def dense_mixture(count=8, density=8.0, seed=7, **interactions):
-    """System, position, orientation, box: `count` each of FIVE, DUMBBELL, CATION, ANION."""
+def dense_mixture(count=16, density=8.0, seed=7, **interactions):
+    """System, position, orientation, box: `count` each of FIVE and TWO in a box not cubic."""
     settings = {"cutoff": 0.6, "precision": "double"} | interactions
-    system = System((FIVE, DUMBBELL, CATION, ANION), (count,) * 4, Interactions(**settings))
+    system = System((FIVE, TWO), (count, count), Interactions(**settings))
     rng = np.random.default_rng(seed)
-    edge = (4 * count / density) ** (1 / 3)
+    edge = (2 * count / density) ** (1 / 3)
     box = edge * np.array([1.0, 1.05, 1 / 1.05])
-    return system, lattice(rng, 4 * count, box, 0.1), turned(rng, 4 * count), box
+    return system, lattice(rng, 2 * count, box, 0.1), turned(rng, 2 * count), box

@@ -25,7 +25,7 @@ NEIGHBOURS = 12  # of a body in a dense liquid
 PROXY = 32  # points per axis that the error of a mesh is summed over
 # ns per charge, per charge and spline point, and per mesh point and log2 of their number: from
 # timings on one core, only to choose among meshes that are all good enough.
-COST = (60.0, 0.35, 0.35)
+COST = (75.0, 3.2, 0.5)
 
 
 def typical_force(system, box):
@@ -186,4 +186,4 @@ def _coarsest(system, box, alpha, order):
 def _cost(charges, order, mesh):
     per_charge, per_tap, per_point = COST
     points = float(np.prod(mesh))
-    return charges * (per_charge + per_tap * order**2 * 10) + points * per_point * np.log2(points)
+    return charges * (per_charge + per_tap * order**2) + points * per_point * np.log2(points)

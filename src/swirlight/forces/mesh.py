@@ -5,7 +5,8 @@ Model   Smooth particle-mesh Ewald: Essmann, Perera, Berkowitz, Darden, Lee & Pe
         gradient of the interpolated energy.
 Units   nm, ps, u, e; energy u nm²/ps².
 Layout  a spline takes a row of WIDTH numbers, zeros behind its p weights, and the mesh has WIDTH
-        further points along z: one row is one vector operation and never wraps.
+        further points along z: one row is one vector operation and never wraps. The weights
+        are polynomials in the place inside a cell, all of a row evaluated together.
         Charges are sorted by planes of constant x, and a plane (when spreading) or a charge
         (when gathering) is written by one thread in fixed order: any number of threads gives
         the same bits.
@@ -15,7 +16,8 @@ import numpy as np
 import scipy.fft
 
 from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli
+from swirlight.forces.kernels.rows import eight_lanes, unaliased
+from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli, spline_table
 from swirlight.units import COULOMB
 
 
@@ -42,69 +44,101 @@ def _sort(place, box, mesh, cell, inside, start, rank):
         rank[start[x]] = m
 
 
-@kernel
-def fill_spline(w, order, weight, slope):
-    """Weights M_p(w + p − 1 − j) of the points j = 0 … p − 1 below a charge, and their slopes.
-
-    w : place inside the cell, 0 ≤ w < 1. Recursion of Essmann et al. 1995, eqs. 4.1 and 4.2.
-    """
-    weight[:] = 0.0
-    slope[:] = 0.0
-    weight[0], weight[1] = 1.0 - w, w
-    for p in range(3, order):
-        _raise_order(w, p, weight)
-    slope[0] = -weight[0]
-    for j in range(1, order):
-        slope[j] = weight[j - 1] - weight[j]
-    _raise_order(w, order, weight)
-
-
-@kernel
-def _raise_order(w, p, weight):
-    scale = 1.0 / (p - 1)
-    weight[p - 1] = scale * w * weight[p - 2]
-    for j in range(p - 2, 0, -1):
-        weight[j] = scale * ((w + p - 1 - j) * weight[j - 1] + (1.0 + j - w) * weight[j])
-    weight[0] *= scale * (1.0 - w)
+@kernel(fast=True)
+def _fill_splines(first, last, charge, mesh, cell, inside, rank, order, taylor, base, weight,
+                  slope):
+    unaliased()
+    c = taylor
+    for r in range(first, last):
+        m = rank[r]
+        for a in range(3):
+            lowest = cell[m, a] - order + 1
+            base[r, a] = lowest if lowest >= 0 else lowest + mesh[a]
+            factor = charge[m] if a == 0 else 1.0
+            t = inside[m, a] - 0.5
+            for n in range(WIDTH):
+                weight[r, a, n] = factor * (
+                    c[0, n] + t * (c[1, n] + t * (c[2, n] + t * (c[3, n] + t * (
+                        c[4, n] + t * (c[5, n] + t * (c[6, n] + t * c[7, n])))))))
+                slope[r, a, n] = factor * (
+                    c[8, n] + t * (c[9, n] + t * (c[10, n] + t * (c[11, n] + t * (
+                        c[12, n] + t * (c[13, n] + t * c[14, n]))))))
 
 
 @kernel(parallel=True)
-def _splines(charge, mesh, cell, inside, rank, order, base, weight, slope):
-    """Splines of the charges in sorted order; those along x carry the charge."""
+def _splines(charge, mesh, cell, inside, rank, order, taylor, base, weight, slope):
+    """Splines of the charges in sorted order, lowest point first; along x times the charge."""
     count = rank.shape[0]
     for chunk in numba.prange(CHUNKS):
-        w, d = np.empty(WIDTH), np.empty(WIDTH)
-        for r in range(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS):
-            m = rank[r]
-            for a in range(3):
-                fill_spline(inside[m, a], order, w, d)
-                lowest = cell[m, a] - order + 1
-                base[r, a] = lowest if lowest >= 0 else lowest + mesh[a]
-                factor = charge[m] if a == 0 else 1.0
-                for j in range(WIDTH):
-                    weight[r, a, j] = factor * w[j]
-                    slope[r, a, j] = factor * d[j]
+        _fill_splines(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS, charge, mesh, cell,
+                      inside, rank, order, taylor, base, weight, slope)
+
+
+@kernel(fast=True)
+def _fill_plane(x, mesh, start, order, base, weight, plane):
+    unaliased()
+    plane[:] = 0.0
+    for j in range(order):
+        c = (x - j + order - 1) % mesh[0]
+        for r in range(start[c], start[c + 1]):
+            z = base[r, 2]
+            profile = weight[r, 2]
+            for k in range(order):
+                factor = weight[r, 0, j] * weight[r, 1, k]
+                y = base[r, 1] + k
+                row = plane[y if y < mesh[1] else y - mesh[1], z:z + WIDTH]
+                eight_lanes()
+                for n in range(WIDTH):
+                    row[n] += factor * profile[n]
+    for y in range(mesh[1]):  # what reached past the end belongs to the beginning
+        for n in range(WIDTH):
+            plane[y, n] += plane[y, mesh[2] + n]
 
 
 @kernel(parallel=True)
 def _spread(mesh, start, order, base, weight, density):
     """Charge density on the mesh, one plane of constant x at a time."""
     for x in numba.prange(mesh[0]):
-        plane = density[x]
-        plane[:] = 0.0
+        _fill_plane(x, mesh, start, order, base, weight, density[x])
+
+
+@kernel(fast=True)
+def _read_field(first, last, mesh, scale, rank, order, base, weight, slope, potential, value,
+                slant, x_sum, y_sum, z_sum, force):
+    unaliased()
+    for r in range(first, last):
+        for n in range(WIDTH):
+            x_sum[n] = y_sum[n] = z_sum[n] = 0.0
+        z = base[r, 2]
         for j in range(order):
-            c = (x - j + order - 1) % mesh[0]
-            for r in range(start[c], start[c + 1]):
-                for k in range(order):
-                    factor = weight[r, 0, j] * weight[r, 1, k]
-                    y = base[r, 1] + k
-                    row = plane[y if y < mesh[1] else y - mesh[1]]
-                    z = base[r, 2]
-                    for n in range(WIDTH):
-                        row[z + n] += factor * weight[r, 2, n]
-        for y in range(mesh[1]):
+            x = base[r, 0] + j
+            plane = potential[x if x < mesh[0] else x - mesh[0]]
             for n in range(WIDTH):
-                plane[y, n] += plane[y, mesh[2] + n]
+                value[n] = slant[n] = 0.0
+            for k in range(order):
+                y = base[r, 1] + k
+                row = plane[y if y < mesh[1] else y - mesh[1], z:z + WIDTH]
+                flat, steep = weight[r, 1, k], slope[r, 1, k]
+                eight_lanes()
+                for n in range(WIDTH):
+                    value[n] += flat * row[n]
+                    slant[n] += steep * row[n]
+            flat, steep = weight[r, 0, j], slope[r, 0, j]
+            eight_lanes()
+            for n in range(WIDTH):
+                x_sum[n] += steep * value[n]
+                y_sum[n] += flat * slant[n]
+                z_sum[n] += flat * value[n]
+        fx, fy, fz = 0.0, 0.0, 0.0
+        eight_lanes()
+        for n in range(WIDTH):
+            fx += weight[r, 2, n] * x_sum[n]
+            fy += weight[r, 2, n] * y_sum[n]
+            fz += slope[r, 2, n] * z_sum[n]
+        m = rank[r]
+        force[m, 0] = -scale[0] * fx
+        force[m, 1] = -scale[1] * fy
+        force[m, 2] = -scale[2] * fz
 
 
 @kernel(parallel=True)
@@ -112,34 +146,10 @@ def _gather(mesh, scale, rank, order, base, weight, slope, potential, force):
     """Force on every charge: minus its charge times the slope of the interpolated potential."""
     count = rank.shape[0]
     for chunk in numba.prange(CHUNKS):
-        line = np.empty((2, WIDTH), potential.dtype)
-        total = np.empty((3, WIDTH), potential.dtype)
-        for r in range(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS):
-            total[:] = 0.0
-            z = base[r, 2]
-            for j in range(order):
-                x = base[r, 0] + j
-                plane = potential[x if x < mesh[0] else x - mesh[0]]
-                line[:] = 0.0
-                for k in range(order):
-                    y = base[r, 1] + k
-                    row = plane[y if y < mesh[1] else y - mesh[1]]
-                    for n in range(WIDTH):
-                        line[0, n] += weight[r, 1, k] * row[z + n]
-                        line[1, n] += slope[r, 1, k] * row[z + n]
-                for n in range(WIDTH):
-                    total[0, n] += slope[r, 0, j] * line[0, n]
-                    total[1, n] += weight[r, 0, j] * line[1, n]
-                    total[2, n] += weight[r, 0, j] * line[0, n]
-            fx, fy, fz = 0.0, 0.0, 0.0
-            for n in range(WIDTH):
-                fx += weight[r, 2, n] * total[0, n]
-                fy += weight[r, 2, n] * total[1, n]
-                fz += slope[r, 2, n] * total[2, n]
-            m = rank[r]
-            force[m, 0] = -scale[0] * fx
-            force[m, 1] = -scale[1] * fy
-            force[m, 2] = -scale[2] * fz
+        work = np.empty((5, WIDTH), potential.dtype)
+        _read_field(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS, mesh, scale, rank,
+                    order, base, weight, slope, potential, work[0], work[1], work[2],
+                    work[3], work[4], force)
 
 
 @kernel(parallel=True)
@@ -177,6 +187,7 @@ class MeshEwald:
         self.charge = np.ascontiguousarray(charge, float)
         self.alpha, self.order, self.dtype = alpha, order, np.dtype(dtype)
         self.mesh = np.array(mesh, np.int64)
+        self._taylor = spline_table(order)
         count, (nx, ny, nz) = len(self.charge), self.mesh
         self._cell, self._base = np.empty((2, count, 3), np.int64)
         self._inside = np.empty((count, 3))
@@ -214,7 +225,7 @@ class MeshEwald:
         mesh, field, nz = self.mesh, self._field, self.mesh[2]
         _sort(place, self._box, mesh, self._cell, self._inside, self._start, self._rank)
         _splines(self.charge, mesh, self._cell, self._inside, self._rank, self.order,
-                 self._base, self._weight, self._slope)
+                 self._taylor, self._base, self._weight, self._slope)
         _spread(mesh, self._start, self.order, self._base, self._weight, field)
         spectrum = scipy.fft.rfftn(field[:, :, :nz], workers=1)
         sums = self._sums(spectrum) if energies else None

@@ -34,3 +34,17 @@ def spline_moduli(points, order):
         moduli[half] = 0.5 * (moduli[half - 1] + moduli[half + 1])
         return moduli
     return 1.0 / power
+
+
+def spline_table(order):
+    """Weights of a charge's points as polynomials in t = w − ½, w its place inside the cell.
+
+    (15, WIDTH): rows 0 … 7 are the coefficients of M_p(w + p − 1 − j), j = 0 … p − 1 the points
+    from the lowest on, the constant first; rows 8 … 14 those of the derivatives by w.
+    """
+    t = 0.5 * np.cos(np.linspace(0.0, np.pi, order))
+    values = cardinal_spline(order, t[:, None] + 0.5 + order - 1 - np.arange(order))
+    table = np.zeros((2 * WIDTH - 1, WIDTH))
+    table[:order, :order] = np.polynomial.polynomial.polyfit(t, values, order - 1)
+    table[WIDTH:] = table[1:WIDTH] * np.arange(1, WIDTH)[:, None]
+    return table
