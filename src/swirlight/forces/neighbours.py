@@ -22,8 +22,9 @@ from swirlight.forces.sites import place_sites
 LANES = 16  # rows are filled up to a multiple of this
 SKINS = (0.02, 0.3)  # the least and the largest inner skin. [nm]
 FIRST_SKIN, GAP = 0.08, 0.15  # inner skin to begin with; outer minus inner skin. [nm]
+FLOAT_SLACK = 1e-5  # what distances in float may be wrong by, and more. [nm]
 # Time of one choice of the inner list over that of one call of the forces (measured).
-LIST_COST = 0.4
+LIST_COST = 0.6
 
 
 @dataclass
@@ -46,7 +47,7 @@ class Kind:
     central: bool
     body: np.ndarray | None = None
     site: np.ndarray | None = None
-    place: np.ndarray | None = None
+    fractions: np.ndarray | None = None
     image: np.ndarray | None = None
     records: np.ndarray | None = None
     reference: np.ndarray | None = None
@@ -67,29 +68,37 @@ class Kind:
 
 
 class Grid:
-    """Cells of at least half the reach in the repeated box."""
+    """Cells of at least half the reach in the repeated box; places as int32 fractions of it."""
 
     def __init__(self, box, repeat, reach, bodies):
         self.box, self.repeat = box, repeat
-        self.edge = box * repeat
+        edge = box * repeat
         # More cells than bodies would only be empty.
         most = max(4, int(np.ceil((8 * bodies * np.prod(repeat)) ** (1 / 3))))
-        self.cells = np.clip(np.floor(2 * self.edge / reach), 1, most).astype(int)
+        self.cells = np.clip(np.floor(2 * edge / reach), 1, most).astype(int)
+        self.unit = (edge / kernels.WHOLE).astype(np.float32)
 
-    def wrap(self, place):
-        """Places [nm] in the unrepeated box."""
-        return place - self.box * np.floor(place / self.box)
+    def fractions(self, position):
+        """(n, 3) int32 fractions of the repeated box, in its first copy of the box."""
+        share = position / self.box
+        whole = (share - np.floor(share)) / self.repeat * kernels.WHOLE
+        return whole.astype(np.int64).astype(np.uint32).view(np.int32)
 
-    def cell(self, place):
-        """The cell of each place in the repeated box, x fastest."""
-        index = np.minimum((place / self.edge * self.cells).astype(int), self.cells - 1)
-        return (index[:, 2] * self.cells[1] + index[:, 1]) * self.cells[0] + index[:, 0]
-
-    def copies(self, place):
-        """Places of all images in the repeated box, copy by copy in the order of `place`."""
+    def copies(self, fractions):
+        """Those of all images, copy by copy, x fastest."""
         x, y, z = (np.arange(n) for n in self.repeat)
         shift = np.stack(np.meshgrid(z, y, x, indexing="ij"), axis=-1).reshape(-1, 3)[:, ::-1]
-        return (place[None] + (shift * self.box)[:, None]).reshape(-1, 3)
+        step = (shift * (2**32 // self.repeat)).astype(np.uint32).view(np.int32)
+        return (fractions[None] + step[:, None]).reshape(-1, 3)
+
+    def cell(self, fractions):
+        """(n, 3) the cell of each place."""
+        return (fractions.view(np.uint32).astype(np.int64) * self.cells) >> 32
+
+    def number(self, fractions):
+        """Cells numbered through, x fastest."""
+        x, y, z = self.cell(fractions).T
+        return (z * self.cells[1] + y) * self.cells[0] + x
 
 
 class Rows:
@@ -101,17 +110,18 @@ class Rows:
 
     def find(self, own, other, grid, reach, same):
         """List the bodies of `other` within reach of those of `own`, centre to centre."""
-        place = grid.copies(other.place)
-        cell = grid.cell(place)
-        slot = np.argsort(cell, kind="stable")
+        place = grid.copies(other.fractions)
+        cell = grid.number(place)
+        slot = np.argsort(cell, kind="stable").astype(np.int32)
         start = np.searchsorted(cell[slot], np.arange(np.prod(grid.cells) + 1))
-        span = np.full(3, 2)
+        sorted_place = np.ascontiguousarray(place[slot].T)
         while True:
             self.found = np.zeros((own.count, self.capacity), np.int32)
             self.found_counts = np.zeros(own.count, np.int32)
-            kernels.find_candidates(own.place, np.ascontiguousarray(place[slot].T), start,
-                                    slot.astype(np.int32), grid.cells, span, grid.edge, reach**2,
-                                    same, self.found, self.found_counts)
+            kernels.find_candidates(own.fractions, grid.cell(own.fractions), sorted_place, start,
+                                    slot, grid.cells, grid.unit,
+                                    np.float32((reach + FLOAT_SLACK) ** 2), same,
+                                    self.found, self.found_counts)
             most = int(self.found_counts.max())
             if most <= self.capacity:
                 break
@@ -121,11 +131,12 @@ class Rows:
 
     def choose(self, own, other, unit, reach):
         """List, of those found, the bodies with any two sites within reach."""
-        dtype = own.records.dtype.type
+        dtype, widest = own.records.dtype.type, reach + own.radius + other.radius
         kernels.keep_near(own.records.ravel(), own.centres.ravel(), other.records.ravel(),
                           other.centres.ravel(), own.sites, other.sites, own.words,
                           np.int32(other.words), self.found, self.found_counts, unit,
-                          dtype(reach**2 * (1 + 1e-6)), self.entries, self.counts)
+                          dtype((reach + FLOAT_SLACK) ** 2), dtype((widest + FLOAT_SLACK) ** 2),
+                          self.entries, self.counts)
 
 
 def interacting_kinds(system, interacting):
@@ -220,9 +231,10 @@ class Neighbours:
         for kind in self.kinds:
             kernels.place(position, self.lever, kind.body, kind.site, kind.image, box,
                           self.repeat, kind.records, kind.centres, kind.reference, self.moved)
-            furthest = max(furthest, float(self.moved.max()))
-            if not np.isfinite(furthest):
+            moved = float(self.moved.max())
+            if not np.isfinite(moved):
                 raise RunError("positions or orientations are no longer finite numbers")
+            furthest = max(furthest, moved)
         return np.sqrt(furthest)
 
     def _make_outer(self, position, box, outer_skin=None):
@@ -257,12 +269,12 @@ class Neighbours:
     def _sort(self, kind, grid):
         """Order a kind's bodies by cells; make room for their records."""
         bodies = np.arange(kind.first, kind.first + kind.count)
-        place = self.outer_position[bodies]
-        order = np.argsort(grid.cell(grid.wrap(place)), kind="stable")
+        fractions = grid.fractions(self.outer_position[bodies])
+        order = np.argsort(grid.number(fractions), kind="stable")
         kind.body = bodies[order]
         kind.site = self.system.site_start[kind.body][:, None] + kind.local
-        kind.place = grid.wrap(place[order])
-        kind.image = np.floor(place[order] / self.box)
+        kind.fractions = fractions[order]
+        kind.image = np.floor(self.outer_position[kind.body] / self.box)
         shape = (kind.count * int(np.prod(self.repeat)), kind.words)
         kind.records = np.zeros(shape, self.dtype)
         kind.reference = np.zeros((*kind.site.shape, 3))

@@ -8,7 +8,7 @@ Bits    each body sums over its own row of a full neighbour list, so results do 
         the number of threads.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -45,7 +45,7 @@ class Call:
     other: int
     my_sites: int
     its_sites: int
-    pattern: dict
+    pattern: Pattern
     pairs: np.ndarray
     modules: dict
 
@@ -105,29 +105,32 @@ class PairForces:
         for own_from, own_to in _groups(own.sites):
             for other_from, other_to in _groups(other.sites):
                 mine, its = own.types[own_from:own_to], other.types[other_from:other_to]
-                pattern, pairs = self._pattern(mine, its, touching, charge)
-                if not pattern["lennard_jones"] and not pattern["coulomb"]:
-                    continue
-                pattern.update(own_words=own.words, central=other.central)
-                yield Call(a, b, 3 + 3 * own_from, 3 + 3 * other_from, pattern, pairs, {})
+                pattern, pairs = self._pattern(own, other, mine, its, touching, charge)
+                if pattern.pairs:
+                    yield Call(a, b, 3 + 3 * own_from, 3 + 3 * other_from, pattern, pairs, {})
 
-    def _pattern(self, mine, its, touching, charge):
+    def _pattern(self, own, other, mine, its, touching, charge):
         """What the kernel of these site types depends on, and the numbers of its pairs."""
         inter, table = self.system.interactions, np.ix_(mine, its)
         sigma, epsilon = (t[table] for t in self.system.lennard_jones)
         terms = laws.lennard_jones_terms(sigma, epsilon, inter.cutoff_form, inter.cutoff)
         products = laws.charge_products(charge[mine], charge[its])
-        near, charged = np.argwhere(touching[table]), np.argwhere(products != 0)
-        pairs = [*terms[tuple(near.T)], *([q, 0, 0, 0] for q in products[tuple(charged.T)])]
-        plain = inter.cutoff_form in ("plain", "tail-corrected")
-        pattern = dict(
-            own=len(mine), other=len(its), degree=self.screening.shape[1] - 1,
-            lennard_jones=tuple((int(a), int(b)) for a, b in near),
-            coulomb=tuple((int(a), int(b)) for a, b in charged),
-            form="plain" if plain or not len(near) else inter.cutoff_form,
-            shifted=self.coulomb.kind == "damped-shifted", real=np.dtype(self.real).name,
+        near, charged = touching[table], products != 0
+        plain = inter.cutoff_form == "tail-corrected" or not near.any()
+        pattern = Pattern(
+            own=len(mine), other=len(its), own_words=own.words, central=other.central,
+            lennard_jones=tuple(map(tuple, np.argwhere(near).tolist())),
+            coulomb=tuple(map(tuple, np.argwhere(charged).tolist())),
+            form="plain" if plain else inter.cutoff_form,
+            degree=self.screening.shape[1] - 1, shifted=self.coulomb.kind == "damped-shifted",
+            energies=False, real=np.dtype(self.real).name,
         )
-        return pattern, np.array(pairs, self.real).reshape(-1, 4)
+        numbers = np.zeros((len(pattern.pairs), 5), self.real)
+        for row, (a, b) in zip(numbers, pattern.pairs, strict=True):
+            charges = [products[a, b]] if charged[a, b] else []
+            contact = terms[a, b] if near[a, b] else []
+            row[: len(charges) + len(contact)] = [*charges, *contact]
+        return pattern, numbers
 
     def evaluate(self, position, orientation, box, force, torque, energies=False):
         """Overwrite force and torque (N, 3) with the pair forces; the sums with `energies`.
@@ -146,7 +149,7 @@ class PairForces:
             own, other = near.kinds[call.own], near.kinds[call.other]
             rows = near.rows[call.own, call.other]
             if energies not in call.modules:
-                text = pair_source(Pattern(energies=energies, **call.pattern))
+                text = pair_source(replace(call.pattern, energies=energies))
                 call.modules[energies] = module_of(text)
             call.modules[energies].rows(
                 own.records.ravel(), own.centres.ravel(), other.records.ravel(),

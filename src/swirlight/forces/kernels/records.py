@@ -80,70 +80,85 @@ def _copy(records, centres, row, copy, x, y, z, repeat):
             records[copy, k] = records[row, k] + shift[k] / repeat[k]
 
 
+@kernel(fast=True)
+def _distances(other, first, last, x, y, z, unit, distance2):
+    """Squared distances of a stretch of places to one place, all in fractions."""
+    streamlined16()
+    ux, uy, uz = unit[0], unit[1], unit[2]
+    for m in range(last - first):
+        dx = np.float32(np.int32(other[0, first + m] - x)) * ux
+        dy = np.float32(np.int32(other[1, first + m] - y)) * uy
+        dz = np.float32(np.int32(other[2, first + m] - z)) * uz
+        distance2[m] = dx * dx + dy * dy + dz * dz
+
+
 @kernel(parallel=True)
-def find_candidates(own, other, cell_start, slot, cells, span, edge, reach2, same, found, counts):
+def find_candidates(own, own_cell, other, cell_start, slot, cells, unit, reach2, same, found,
+                    counts):
     """Bodies of one kind within reach of those of another, centre to centre.
 
-    own : (n, 3) places in the box. [nm]
-    other : (3, m) places in the repeated box, cell by cell, x fastest; cell_start : (cells + 1,)
-    slot : (m,) their rows of the records; same : whether row i is body i itself.
-    cells, span : (3,) numbers of cells, and how many of them on either side are searched.
+    own : (n, 3), other : (3, m) int32 fractions of the repeated box, `other` cell by cell, x
+    fastest; own_cell : (n, 3); cell_start : (cells + 1,); cells : (3,), of half the reach.
+    slot : (m,) the rows of the records of `other`; same : whether row i is body i itself.
+    unit : (3,) float32 nm per unit of the fractions.
     found : (n, capacity) int32 rows of the records; counts : (n,) how many there are, which
         may be more than fit: then the list must be made again with more capacity.
     """
     n, capacity = found.shape
+    width = np.minimum(cells, 5)  # two cells on either side, but none twice
     for chunk in numba.prange(CHUNKS):
+        distance2 = np.empty(slot.shape[0], np.float32)
+        row = np.empty(slot.shape[0] + 1, np.int32)
         for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
-            x, y, z = own[i]
-            cx = int(x / edge[0] * cells[0])
-            cy = int(y / edge[1] * cells[1])
-            cz = int(z / edge[2] * cells[2])
             count = 0
-            for kz in range(min(2 * span[2] + 1, cells[2])):
-                for ky in range(min(2 * span[1] + 1, cells[1])):
-                    line = (((cz - span[2] + kz) % cells[2]) * cells[1]
-                            + (cy - span[1] + ky) % cells[1]) * cells[0]
-                    # The cells along x are contiguous, in one stretch or in two.
-                    width = min(2 * span[0] + 1, cells[0])
-                    first = (cx - span[0]) % cells[0]
-                    ends = min(first + width, cells[0])
-                    for part in range(2):
-                        begin, end = (first, ends) if part == 0 else (0, first + width - ends)
-                        for m in range(cell_start[line + begin], cell_start[line + end]):
-                            dx, dy, dz = other[0, m] - x, other[1, m] - y, other[2, m] - z
-                            dx -= edge[0] * np.rint(dx / edge[0])
-                            dy -= edge[1] * np.rint(dy / edge[1])
-                            dz -= edge[2] * np.rint(dz / edge[2])
-                            near = dx * dx + dy * dy + dz * dz < reach2
-                            if near and not (same and slot[m] == i):
-                                if count < capacity:
-                                    found[i, count] = slot[m]
-                                count += 1
-            counts[i] = count
+            first = own_cell[i, 0] - 2
+            for zy in range(width[2] * width[1]):
+                z = (own_cell[i, 2] - 2 + zy // width[1]) % cells[2]
+                y = (own_cell[i, 1] - 2 + zy % width[1]) % cells[1]
+                line = (z * cells[1] + y) * cells[0]
+                # The cells along x are contiguous, in one stretch or in two.
+                begin = first % cells[0]
+                end = min(begin + width[0], cells[0])
+                rest = begin + width[0] - end
+                for a, b in ((begin, end), (0, rest)):
+                    start, stop = cell_start[line + a], cell_start[line + b]
+                    _distances(other, start, stop, own[i, 0], own[i, 1], own[i, 2], unit,
+                               distance2)
+                    for m in range(stop - start):
+                        row[count] = slot[start + m]
+                        count += distance2[m] < reach2
+            kept = 0
+            for k in range(count):
+                if kept < capacity:
+                    found[i, kept] = row[k]
+                kept += not (same and row[k] == i)
+            counts[i] = kept
 
 
 @kernel(fast=True)
 def _separations(own, own_centre, other, other_centre, mine, words, found, count, edge, apart):
-    """Centre to nearest image, apart[0:3], and room for the closest approach, apart[3]."""
+    """Centre to nearest image, apart[0:3], and the square of the distance, apart[3]."""
     streamlined16()
     edge0, edge1, edge2 = edge[0], edge[1], edge[2]
     if own.itemsize == 4:
         c0, c1, c2 = own_centre[mine], own_centre[mine + 1], own_centre[mine + 2]
         for k in range(((count + 15) >> 4) << 4):
             j = found[k] * words
-            apart[0, k] = np.float32(np.int32(at(other_centre, 0, j) - c0)) * edge0
-            apart[1, k] = np.float32(np.int32(at(other_centre, 1, j) - c1)) * edge1
-            apart[2, k] = np.float32(np.int32(at(other_centre, 2, j) - c2)) * edge2
-            apart[3, k] = np.float32(1e30)
+            dx = np.float32(np.int32(at(other_centre, 0, j) - c0)) * edge0
+            dy = np.float32(np.int32(at(other_centre, 1, j) - c1)) * edge1
+            dz = np.float32(np.int32(at(other_centre, 2, j) - c2)) * edge2
+            apart[0, k], apart[1, k], apart[2, k] = dx, dy, dz
+            apart[3, k] = dx * dx + dy * dy + dz * dz
     else:
         x, y, z = own[mine], own[mine + 1], own[mine + 2]
         for k in range(((count + 15) >> 4) << 4):
             j = found[k] * words
             dx, dy, dz = at(other, 0, j) - x, at(other, 1, j) - y, at(other, 2, j) - z
-            apart[0, k] = (dx - np.rint(dx)) * edge0
-            apart[1, k] = (dy - np.rint(dy)) * edge1
-            apart[2, k] = (dz - np.rint(dz)) * edge2
-            apart[3, k] = 1e30
+            dx = (dx - np.floor(dx + 0.5)) * edge0
+            dy = (dy - np.floor(dy + 0.5)) * edge1
+            dz = (dz - np.floor(dz + 0.5)) * edge2
+            apart[0, k], apart[1, k], apart[2, k] = dx, dy, dz
+            apart[3, k] = dx * dx + dy * dy + dz * dz
 
 
 @kernel(fast=True)
@@ -172,22 +187,32 @@ def _approach(other, site, words, found, count, sites, apart):
 
 @kernel(parallel=True)
 def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_words, words,
-              found, found_counts, edge, reach2, entries, counts):
-    """Of the candidates, those with any pair of sites within reach.
+              found, found_counts, edge, near2, far2, entries, counts):
+    """Of the candidates, those with any pair of sites, or the centres, within reach.
 
     own, other : flat records of own_words and `words` (an int32) words, with own_sites and
         other_sites lever arms each.
     found, found_counts : from `find_candidates`; edge : nm per unit of the centre's words.
-    entries : (n, capacity) int32 starts of records, as many as found or more; counts : (n,).
+    near2 : reach²; far2 : of centres too far apart for any pair of sites to be within reach.
+    entries : (n, capacity) int32 starts of records, capacity as of `found`; counts : (n,).
     """
     n, capacity = entries.shape
     for chunk in numba.prange(CHUNKS):
         apart = np.empty((4, capacity), own.dtype)
         four = np.empty((4, 3), own.dtype)
+        unsure = np.zeros(capacity, np.int32)
         for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
             mine = i * own_words
             row, total = found[i], found_counts[i]
             _separations(own, own_centre, other, other_centre, mine, words, row, total, edge,
+                         apart)
+            count = left = 0
+            for k in range(total):
+                entries[i, count] = row[k] * words
+                count += apart[3, k] < near2
+                unsure[left] = row[k]
+                left += (apart[3, k] >= near2) & (apart[3, k] < far2)
+            _separations(own, own_centre, other, other_centre, mine, words, unsure, left, edge,
                          apart)
             for first in range(0, own_sites, 4):
                 for s in range(4):
@@ -195,9 +220,8 @@ def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_
                     for k in range(3):
                         four[s, k] = own[word + k]
                 for b in range(other_sites):
-                    _approach(other, 3 + 3 * b, words, row, total, four, apart)
-            count = 0
-            for k in range(total):
-                entries[i, count] = row[k] * words
-                count += apart[3, k] < reach2
+                    _approach(other, 3 + 3 * b, words, unsure, left, four, apart)
+            for k in range(left):
+                entries[i, count] = unsure[k] * words
+                count += apart[3, k] < near2
             counts[i] = count

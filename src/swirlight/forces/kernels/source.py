@@ -65,13 +65,27 @@ from swirlight.forces.kernels.lowlevel import at, streamlined{lanes} as streamli
 
 real = np.{real}
 zero, half, one = real(0.0), real(0.5), real(1.0)
+'''
 
+# One site pair: its force over the distance, outward, and its energies.
+PAIR = '''
+
+@kernel(fast=True, forceinline=True)
+def {name}(r2, pair, p, g, limits):
+    cutoff2, scale, start, steep, far, pull = limits
+{body}
+'''
+
+ROW = '''
 
 @kernel(fast=True)
 def row(own, own_centre, other, other_centre, mine, my_sites, its_sites, neighbours, count,
         edge, pairs, screening, limits, out):
     streamlined()
-    cutoff2, scale, start, steep, far, pull = limits
+{before}
+    for k in range(((count + {fill}) >> {shift}) << {shift}):
+{loop}
+{after}
 '''
 
 DRIVER = '''
@@ -115,42 +129,27 @@ RECIPROCAL_ROOT = {
 
 
 def _polynomial(name, degree):
-    """Horner's scheme for name0 + name1 t + …"""
-    text = f"{name}{degree}"
+    """Horner's scheme for name[0] + name[1] t + …"""
+    text = f"{name}[{degree}]"
     for k in range(degree - 1, -1, -1):
-        text = f"({text}) * t + {name}{k}" if k < degree - 1 else f"{text} * t + {name}{k}"
+        text = f"({text}) * t + {name}[{k}]" if k < degree - 1 else f"{text} * t + {name}[{k}]"
     return text
 
 
-def _centres(pattern):
-    """Lines that set X, Y, Z, from this body's centre to its neighbour's nearest image."""
-    lines = []
-    for k, x in enumerate("XYZ"):
-        if pattern.real == "float32":
-            lines.append(f"{x} = real(np.int32(at(other_centre, {k}, j) - centre{k})) * edge{k}")
-        else:
-            lines += [f"s = at(other, {k}, j) - centre{k}",
-                      f"{x} = (s - np.floor(s + half)) * edge{k}"]
-    # A row is filled up to a whole number of lanes; what fills it is moved out of reach.
-    return [*lines, "X = X if k < count else far"]
-
-
-def _coulomb(pattern, name):
-    lines = ["t = r2 * scale - one", f"p = {_polynomial('p', pattern.degree)}"]
-    root = "(w2 - pull)" if pattern.shifted else "w2"
-    lines.append(f"f = q{name} * (w * {root} - p)")
+def _coulomb(pattern):
+    """Lines that set f and coulomb; the charges are the pair's first number."""
+    root, tilt = ("(w2 - pull)", " + pull * r2 * w") if pattern.shifted else ("w2", "")
+    lines = ["t = r2 * scale - one",
+             f"f = pair[0] * (w * {root} - ({_polynomial('p', pattern.degree)}))"]
     if pattern.energies:
-        tilt = " + pull * r2 * w" if pattern.shifted else ""
-        lines += [f"g = {_polynomial('g', pattern.degree)}",
-                  f"u = q{name} * (w - g{tilt})",
-                  "coulomb += u if r2 < cutoff2 else zero"]
+        lines.append(f"coulomb = pair[0] * (w - ({_polynomial('g', pattern.degree)}){tilt})")
     return lines
 
 
-def _lennard_jones(pattern, name, add):
-    """Lines that set or add to f, the force over the distance, outward."""
+def _lennard_jones(pattern, first):
+    """Lines that set v and u, from the pair's numbers from `first` on."""
     lines = ["s = w2 * w2 * w2",
-             f"a, b = twelve{name} * s, six{name}",
+             f"a, b = pair[{first}] * s, pair[{first + 1}]",
              "u = s * (a - b)",
              "v = real(6.0) * s * w2 * (a + a - b)"]
     if pattern.form == "switched":
@@ -161,50 +160,79 @@ def _lennard_jones(pattern, name, add):
                   "v = v * s + real(30.0) * steep * u * w * h * h",
                   "u = u * s"]
     if pattern.form == "force-shifted":
-        lines += [f"v -= slope{name} * w", f"u += slope{name} * (r2 * w) + offset{name}"]
-    lines.append("f += v" if add else "f = v")
-    if pattern.energies:
-        lines.append("lennard_jones += u if r2 < cutoff2 else zero")
+        lines += [f"v -= pair[{first + 2}] * w",
+                  f"u += pair[{first + 2}] * (r2 * w) + pair[{first + 3}]"]
     return lines
 
 
-def _site_pair(pattern, a, b):
-    lines = [f"dx, dy, dz = {', '.join(f'{x}b - {x}{a}' for x in 'xyz')}",
-             "r2 = dx * dx + dy * dy + dz * dz", *RECIPROCAL_ROOT[pattern.real], "w2 = w * w"]
-    charged = (a, b) in pattern.coulomb
+def _pair_function(pattern, touching, charged):
+    """The text of the function for site pairs with Lennard-Jones, charges, or both."""
+    lines = [*RECIPROCAL_ROOT[pattern.real], "w2 = w * w"]
     if charged:
-        lines += _coulomb(pattern, f"{a}_{b}")
-    if (a, b) in pattern.lennard_jones:
-        lines += _lennard_jones(pattern, f"{a}_{b}", add=charged)
-    lines.append("f = f if r2 < cutoff2 else zero")
-    for x in "xyz":
-        if pattern.energies:
-            lines += [f"d{x} *= f", f"f{x}{a} -= d{x}", f"pair{x} += d{x}"]
-        else:
-            lines.append(f"f{x}{a} -= f * d{x}")
-    return lines
+        lines += _coulomb(pattern)
+    if touching:
+        lines += _lennard_jones(pattern, first=int(charged))
+        lines.append("f += v" if charged else "f = v")
+    lines += ["inside = r2 < cutoff2", "f = f if inside else zero"]
+    if pattern.energies:
+        lines.append("u = u if inside else zero" if touching else "u = zero")
+        lines.append("q = coulomb if inside else zero" if charged else "q = zero")
+    lines.append("return f, u, q" if pattern.energies else "return f")
+    return PAIR.format(name=_pair_name(touching, charged), body=_block(lines, 4))
+
+
+def _pair_name(touching, charged):
+    return "_and_".join(["lennard_jones"] * touching + ["coulomb"] * charged)
+
+
+def _block(lines, indent):
+    return "\n".join(" " * indent + line for line in lines)
 
 
 def _before(pattern):
     """Lines ahead of the loop: everything that does not change from neighbour to neighbour."""
-    count = pattern.degree + 1
-    lines = [f"{name}{k} = screening[{row}, {k}]"
-             for row, name in enumerate("pg" if pattern.energies else "p") for k in range(count)]
+    rows = (0, 1) if pattern.energies else (0, 0)
+    lines = [f"{name} = ({''.join(f'screening[{row}, {k}], ' for k in range(pattern.degree + 1))})"
+             for name, row in zip("pg", rows, strict=True)]
+    lines.append(f"reach = ({', '.join(f'limits[{k}]' for k in range(6))})")
     lines += [f"edge{k} = edge[{k}]" for k in range(3)]
     centre = "own_centre" if pattern.real == "float32" else "own"
     lines += [f"centre{k} = {centre}[mine + {k}]" for k in range(3)]
-    for n, (a, b) in enumerate(pattern.lennard_jones):
-        lines += [f"{name}{a}_{b} = pairs[{n}, {k}]"
-                  for k, name in enumerate(("twelve", "six", "slope", "offset"))
-                  if k < 2 or pattern.form == "force-shifted"]
-    first = len(pattern.lennard_jones)
-    lines += [f"q{a}_{b} = pairs[{first + n}, 0]" for n, (a, b) in enumerate(pattern.coulomb)]
+    for n, (a, b) in enumerate(pattern.pairs):
+        numbers = "".join(f"pairs[{n}, {k}], " for k in range(5))
+        lines.append(f"pair{a}_{b} = ({numbers})")
     for a in range(pattern.own):
         lines += [f"{x}{a} = own[mine + my_sites + {3 * a + k}]" for k, x in enumerate("xyz")]
         lines.append(" = ".join(f"f{x}{a}" for x in "xyz") + " = zero")
     if pattern.energies:
-        lines.append(" = ".join(("total_lj", "total_coulomb", *(f"virial{x}" for x in "xyz")))
-                     + " = zero")
+        lines.append("sum_u = sum_q = virialx = virialy = virialz = zero")
+    return lines
+
+
+def _centres(pattern):
+    """Lines that set X, Y, Z, from this body's centre to its neighbour's nearest image."""
+    lines = []
+    for k, x in enumerate("XYZ"):
+        if pattern.real == "float32":
+            whole = f"np.int32(at(other_centre, {k}, j) - centre{k})"
+            lines.append(f"{x} = real({whole}) * edge{k}")
+        else:
+            lines += [f"s = at(other, {k}, j) - centre{k}",
+                      f"{x} = (s - np.floor(s + half)) * edge{k}"]
+    # A row is filled up to a whole number of lanes; what fills it is moved out of reach.
+    return [*lines, "X = X if k < count else far"]
+
+
+def _site_pair(pattern, a, b):
+    name = _pair_name((a, b) in pattern.lennard_jones, (a, b) in pattern.coulomb)
+    lines = [f"dx, dy, dz = {', '.join(f'{x}b - {x}{a}' for x in 'xyz')}",
+             "r2 = dx * dx + dy * dy + dz * dz"]
+    call = f"{name}(r2, pair{a}_{b}, p, g, reach)"
+    if not pattern.energies:
+        return [*lines, f"f = {call}", *(f"f{x}{a} -= f * d{x}" for x in "xyz")]
+    lines += [f"f, u, q = {call}", "pair_u += u", "pair_q += q"]
+    for x in "xyz":
+        lines += [f"d{x} *= f", f"f{x}{a} -= d{x}", f"pair{x} += d{x}"]
     return lines
 
 
@@ -212,7 +240,7 @@ def _loop(pattern):
     """Lines of the loop over neighbours."""
     lines = ["j = neighbours[k]", *_centres(pattern)]
     if pattern.energies:
-        lines.append("lennard_jones = coulomb = pairx = pairy = pairz = zero")
+        lines.append("pair_u = pair_q = pairx = pairy = pairz = zero")
     site = None
     for a, b in pattern.pairs:
         if b != site:
@@ -222,7 +250,8 @@ def _loop(pattern):
                       for k, x in enumerate("xyz")]
         lines += _site_pair(pattern, a, b)
     if pattern.energies:
-        lines += ["total_lj += lennard_jones", "total_coulomb += coulomb"]
+        # Neutral bodies: the sum over one neighbour is small, which keeps the total's digits.
+        lines += ["sum_u += pair_u", "sum_q += pair_q"]
         lines += [f"virial{x} += pair{x} * {x.upper()}" for x in "xyz"]
     return lines
 
@@ -230,7 +259,7 @@ def _loop(pattern):
 def _after(pattern):
     names = [f"f{x}{a}" for a in range(pattern.own) for x in "xyz"]
     if pattern.energies:
-        names += ["total_lj", "total_coulomb", "virialx", "virialy", "virialz"]
+        names += ["sum_u", "sum_q", "virialx", "virialy", "virialz"]
     return [f"out[{k}] = {name}" for k, name in enumerate(names)]
 
 
@@ -244,19 +273,20 @@ def pair_source(pattern):
     my_sites, its_sites : word of a record with which the sites of this call begin.
     entries, counts : (n, capacity) int32 record starts of the neighbours of each body, (n,).
     edge : (3,) nm per unit of the centre's words.
-    pairs : the rows of `laws.lennard_jones_terms`, then (k q q', 0, 0, 0).
+    pairs : (acting pairs, 5), in the order of `Pattern.pairs`: k q q' where there are charges,
+        then `laws.lennard_jones_terms` where there is Lennard-Jones; the rest is not read.
     screening : (2, degree + 1) of `laws.CoulombLaw.polynomials`.
     limits : rc², 2/rc², start of the switch, 1 / its width, a place out of reach, force shift.
     body : (n,) where force and torque (N, 3) and, with energies, sums (N, 5) are added to.
     """
     lanes = LANES[pattern.real]
     size = 3 * pattern.own + (len(ROW_SUMS) if pattern.energies else 0)
-    shift = lanes.bit_length() - 1
     text = HEADER.format(pattern=pattern, lanes=lanes, real=pattern.real)
-    text += "".join(f"    {line}\n" for line in _before(pattern))
-    text += f"    for k in range(((count + {lanes - 1}) >> {shift}) << {shift}):\n"
-    text += "".join(f"        {line}\n" for line in _loop(pattern))
-    text += "".join(f"    {line}\n" for line in _after(pattern))
+    kinds = {(pair in pattern.lennard_jones, pair in pattern.coulomb) for pair in pattern.pairs}
+    text += "".join(_pair_function(pattern, *kind) for kind in sorted(kinds))
+    text += ROW.format(before=_block(["far = limits[4]", *_before(pattern)], 4), fill=lanes - 1,
+                       shift=lanes.bit_length() - 1, loop=_block(_loop(pattern), 8),
+                       after=_block(_after(pattern), 4))
     text += DRIVER.format(out=size, words=pattern.own_words, sites=pattern.own)
     if pattern.energies:
         text += f"            for s in range({len(ROW_SUMS)}):\n"
