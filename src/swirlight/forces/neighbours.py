@@ -169,6 +169,7 @@ class Neighbours:
         self.lever = np.empty((int(system.site_start[-1]), 3))
         self.radius = max((k.radius for k in kinds), default=0.0)
         self.skin, self.outer_skin, self.calls = FIRST_SKIN, None, 0
+        self.last_moved = 0.0  # what the last call found the sites to have moved
         self.moved = np.zeros(CHUNKS)
         self.box = None  # that the lists were made for
 
@@ -182,7 +183,8 @@ class Neighbours:
             self._make_outer(position, box)
         else:
             moved = self._place(position, box)
-            self.calls += 1
+            self.calls += moved != self.last_moved  # a call at the same places is no new one
+            self.last_moved = moved
             if 2 * moved <= self.skin:
                 return
             self._adapt_skin(2 * moved)
@@ -196,7 +198,7 @@ class Neighbours:
         if self.box is None:
             return {}
         return {
-            "skins": np.array([self.skin, self.outer_skin, self.calls]),
+            "skins": np.array([self.skin, self.outer_skin, self.calls, self.last_moved]),
             "box": self.box,
             "outer_position": self.outer_position,
             "inner_position": self.inner_position,
@@ -208,12 +210,12 @@ class Neighbours:
         self.box = None
         if not memory:
             return
-        self.skin, outer_skin, calls = (float(value) for value in memory["skins"])
+        self.skin, outer_skin, calls, last_moved = (float(value) for value in memory["skins"])
         position, orientation = memory["inner_position"], memory["inner_orientation"]
         place_sites(self.system, position, orientation, self.lever)
         self._make_outer(memory["outer_position"], memory["box"], outer_skin)
         self._choose_inner(position, orientation)
-        self.calls = int(calls)
+        self.calls, self.last_moved = int(calls), last_moved
 
     def _adapt_skin(self, moved):
         """Set the inner skin to what costs least at the speed sites were seen to move.
@@ -282,7 +284,7 @@ class Neighbours:
     def _choose_inner(self, position, orientation):
         """List, of the outer list, the bodies that have sites near each other."""
         self.inner_position, self.inner_orientation = np.array(position), np.array(orientation)
-        self.calls = 0
+        self.calls, self.last_moved = 0, 0.0
         for kind in self.kinds:
             kind.reference[:] = position[kind.body][:, None] + self.lever[kind.site]
         self._place(position, self.box)
