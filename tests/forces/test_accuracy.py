@@ -4,7 +4,6 @@ import subprocess
 import sys
 from dataclasses import replace
 
-import numpy as np
 import pytest
 
 from swirlight.forces import accuracy

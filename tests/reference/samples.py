@@ -1,6 +1,7 @@
 """Bodies and samples that tests of the forces share; all parameters invented unless said."""
 
 import numpy as np
+from scipy.spatial.transform import Rotation
 
 from swirlight.species.body import ATOM, GENERAL, LINEAR, Species
 from swirlight.system import Interactions, System
@@ -60,4 +61,34 @@ def dense_mixture(count=16, density=8.0, seed=7, **interactions):
     rng = np.random.default_rng(seed)
     edge = (2 * count / density) ** (1 / 3)
     box = edge * np.array([1.0, 1.05, 1 / 1.05])
-    return system, lattice(rng, 2 * count, box, 0.1), turned(rng, 2 * count), box
+    position = lattice(rng, 2 * count, box, 0.08)
+    return system, position, without_overlap(rng, system, position, box), box
+
+
+def without_overlap(rng, system, position, box, draws=60):
+    """Orientations, each the best of some draws: sites of two bodies kept as far as can be."""
+    placed, orientation = np.empty((0, 3)), []
+    for i, k in enumerate(system.species_of):
+        options = []
+        for q in turned(rng, draws):
+            sites = position[i] + Rotation.from_quat(q, scalar_first=True).apply(
+                system.species[k].sites)
+            apart = sites[:, None] - placed
+            apart -= np.round(apart / box) * box
+            options.append((np.min((apart**2).sum(-1), initial=1e9), tuple(q), sites))
+        _, q, sites = max(options, key=lambda option: option[0])
+        placed = np.concatenate([placed, sites])
+        orientation.append(q)
+    return np.array(orientation)
+
+
+def spce(sigma=0.3166, epsilon=0.650):
+    """SPC/E water, Berendsen, Grigera & Straatsma, J. Phys. Chem. 91 (1987) 6269.
+
+    epsilon : [u nm²/ps², to 1e-9 kJ/mol]. Planar, the dipole along −y of the frame below: only
+    distances inside the molecule matter to whoever uses it.
+    """
+    half = np.deg2rad(109.47) / 2
+    arm = 0.1 * np.array([np.sin(half), np.cos(half), 0.0])
+    return body("SPC/E", [[0, 0, 0], arm, arm * [-1, 1, 1]], [15.999, 1.008, 1.008],
+                [-0.8476, 0.4238, 0.4238], [sigma, 0.0, 0.0], [epsilon, 0.0, 0.0])

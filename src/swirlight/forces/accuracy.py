@@ -113,39 +113,46 @@ def mesh_error(alpha, order, mesh, box):
     A wave k on the mesh is Σ_s a_s exp(i k_s·r), k_s the aliases of k and a_s the splines'
     amplitudes, divided by their sum. A pair's force error is then, averaged over both places,
         Σ_k g² [ Σ_s k_s² a_s² · Σ_t a_t² − 2 k² a_0² + k² ],    g = 4π exp(−k²/4α²)/(V k²),
-    and a charge pushes itself by waves of the mesh spacing, the strongest along each axis with
-    amplitude Σ_k g Σ_t k_{t+1} a_{t+1} a_t.
+    summed below without its cancellation; and a charge pushes itself by waves of the mesh
+    spacing, the strongest along each axis with amplitude Σ_k g Σ_t k_{t+1} a_{t+1} a_t.
     Meshes finer than PROXY points are taken as a smaller box of the same spacing.
     """
     points = np.minimum(mesh, PROXY)
     edges = np.asarray(box) * points / np.asarray(mesh)
     axes = [_aliases(int(n), order, edge) for n, edge in zip(points, edges, strict=True)]
-    k2, first, aliases, gradients, neighbours = (np.ix_(*part) for part in zip(*axes, strict=True))
+    k2, first, rest, pull, push = (np.ix_(*part) for part in zip(*axes, strict=True))
     square = sum(k2)
     square[0, 0, 0] = np.inf
     strength = 4.0 * np.pi * np.exp(-square / (4.0 * alpha**2)) / square
     square[0, 0, 0] = 0.0
-    (ax, ay, az), (gx, gy, gz), (nx, ny, nz) = aliases, gradients, neighbours
-    bracket = (ax * ay * az * (gx * ay * az + ax * gy * az + ax * ay * gz)
-               - 2.0 * square * first[0] * first[1] * first[2] + square)
-    own = [(strength * wave).sum() / np.prod(edges)
-           for wave in (nx * ay * az, ax * ny * az, ax * ay * nz)]
+    a_0 = first[0] * first[1] * first[2]
+    gradient, own = 0.0, 0.0
+    for x, y, z in ((0, 1, 2), (1, 2, 0), (2, 0, 1)):
+        both = (first[y] + rest[y]) * (first[z] + rest[z])  # Σ a_s² along two axes
+        gradient = (gradient + pull[x] * both
+                    + k2[x] * first[x] * (rest[y] * (first[z] + rest[z]) + first[y] * rest[z]))
+        own += ((strength * push[x] * both).sum() / np.prod(edges)) ** 2
+    strays = (rest[0] * (first[1] + rest[1]) * (first[2] + rest[2])
+              + first[0] * (rest[1] * (first[2] + rest[2]) + first[1] * rest[2]))
+    bracket = square * ((1.0 - a_0) ** 2 + a_0 * strays) + gradient * (a_0 + strays)
     pair = (strength**2 * bracket).sum() / np.prod(edges) / np.prod(box)
     coarsest = np.max(np.asarray(box) / np.asarray(mesh))
-    pair += left_out_error(alpha, np.pi / coarsest, box)
-    return float(pair), float(2.0 * np.square(own).sum())
+    return float(pair + left_out_error(alpha, np.pi / coarsest, box)), float(2.0 * own)
 
 
 def _aliases(points, order, edge):
-    """Of each k along one axis: k², a_0², Σ a_s², Σ k_s² a_s², Σ k_{t+1} a_{t+1} a_t."""
+    """Along one axis, for each k: k², a_0², then over the aliases other than k itself Σ a_s² and
+    Σ k_s² a_s², then Σ k_{t+1} a_{t+1} a_t.
+    """
     x = scipy.fft.fftfreq(points)[:, None]
     s = np.arange(-3, 4)
     with np.errstate(invalid="ignore"):
         amplitude = np.where(s == 0, 1.0, (x / (x + s)) ** order)
     wave = 2.0 * np.pi * points / edge * (x + s)
     first = np.sinc(x[:, 0]) ** (2 * order) * spline_moduli(points, order)
-    return (wave[:, 3] ** 2, first, first * (amplitude**2).sum(axis=1),
-            first * (wave**2 * amplitude**2).sum(axis=1),
+    strays = np.where(s == 0, 0.0, amplitude**2)
+    return (wave[:, 3] ** 2, first, first * strays.sum(axis=1),
+            first * (wave**2 * strays).sum(axis=1),
             first * (wave[:, 1:] * amplitude[:, 1:] * amplitude[:, :-1]).sum(axis=1))
 
 
