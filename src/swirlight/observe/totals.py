@@ -66,16 +66,6 @@ class Total:
     lit: bool = False
 
 
-def total_energy(now):
-    """H0 = K + U, without field energies. [u nm²/ps²]"""
-    return sum(now.kinetic) + now.mover.load.energy
-
-
-def energy_residual(now):
-    """H0 less its opening value and all work since: what the splitting leaves. [u nm²/ps²]"""
-    return total_energy(now) - now.ledger.opening_energy - now.ledger.work
-
-
 def pressure(now):
     """p = N k T/V + W/3V with T of the translation and W the molecular virial. [u/nm/ps²]"""
     freedom = now.mover.freedom.translation
@@ -146,7 +136,7 @@ _ALL = (
     Total("potential_energy", lambda n: n.mover.load.energy, "kJ mol-1", KJ, (), BOX),
     Total("kinetic_energy_translation", lambda n: n.kinetic[0], "kJ mol-1", KJ, (), BOX),
     Total("kinetic_energy_rotation", lambda n: n.kinetic[1], "kJ mol-1", KJ, (), BOX),
-    Total("total_energy", total_energy, "kJ mol-1", KJ, (),
+    Total("total_energy", lambda n: n.mover.total_energy(n.state), "kJ mol-1", KJ, (),
           {**BOX, "parts": "kinetic and potential, no field energy"}),
     Total("temperature", _temperature("total"), "K"),
     Total("temperature_translation", _temperature("translation"), "K"),
@@ -164,7 +154,7 @@ _ALL = (
     _impulse("bath_impulse", "thermostat"),
     Total("absorbed_energy", _ledger("absorbed_energy"), "kJ mol-1", KJ, (),
           {**BOX, "since": "the stage began", "goes": "to electrons, not put into the bodies"}),
-    Total("energy_residual", energy_residual, "kJ mol-1", KJ, (), BOX),
+    Total("energy_residual", lambda n: n.mover.energy_residual(n.state), "kJ mol-1", KJ, (), BOX),
     Total("alignment", alignment, None, 1.0, (), {"of": "P2 of body z along the beam",
                                                  "per": "body"}),
     Total("orientation_along_beam", orientation_along_beam, None, 1.0, (),
