@@ -23,8 +23,9 @@ LANES = 16  # rows are filled up to a multiple of this
 SKINS = (0.02, 0.3)  # the least and the largest inner skin. [nm]
 FIRST_SKIN, GAP = 0.08, 0.15  # inner skin to begin with; outer minus inner skin. [nm]
 FLOAT_SLACK = 1e-5  # what distances in float may be wrong by, and more. [nm]
+LOST = "positions or orientations are no longer finite numbers"
 # Time of one choice of the inner list over that of one call of the forces (measured).
-LIST_COST = 0.6
+LIST_COST = 0.7
 
 
 @dataclass
@@ -114,6 +115,7 @@ class Rows:
         cell = grid.number(place)
         slot = np.argsort(cell, kind="stable").astype(np.int32)
         start = np.searchsorted(cell[slot], np.arange(np.prod(grid.cells) + 1))
+        slot = np.concatenate([slot, np.zeros(LANES, np.int32)])
         sorted_place = np.ascontiguousarray(place[slot].T)
         while True:
             self.found = np.zeros((own.count, self.capacity), np.int32)
@@ -158,7 +160,8 @@ class Neighbours:
     """The neighbour lists of a system: call `update` before the forces.
 
     kinds : the `Kind`s; rows : {(own, other): Rows} by their numbers.
-    unit : (3,) nm per unit of a record's centre words, of the records' type.
+    unit : (2, 3) nm per unit of a record's centre words, of the records' type, and what that
+        type's rounding left of it.
     """
 
     def __init__(self, system, kinds, cutoff, dtype, repeat=None):
@@ -235,12 +238,14 @@ class Neighbours:
                           self.repeat, kind.records, kind.centres, kind.reference, self.moved)
             moved = float(self.moved.max())
             if not np.isfinite(moved):
-                raise RunError("positions or orientations are no longer finite numbers")
+                raise RunError(LOST)
             furthest = max(furthest, moved)
         return np.sqrt(furthest)
 
     def _make_outer(self, position, box, outer_skin=None):
         """Sort the bodies into cells and list all with centres near each other."""
+        if not np.isfinite(position).all():
+            raise RunError(LOST)
         self.box, self.outer_position = np.array(box), np.array(position)
         self.outer_skin, self.repeat = self._images(outer_skin)
         reach = self.cutoff + 2 * self.radius + self.outer_skin
@@ -289,6 +294,7 @@ class Neighbours:
             kind.reference[:] = position[kind.body][:, None] + self.lever[kind.site]
         self._place(position, self.box)
         whole = kernels.WHOLE if self.dtype == np.float32 else 1.0
-        self.unit = (self.box * self.repeat / whole).astype(self.dtype)
+        unit = self.box * self.repeat / whole
+        self.unit = np.array([unit, unit - unit.astype(self.dtype)], self.dtype)
         for (a, b), rows in self.rows.items():
-            rows.choose(self.kinds[a], self.kinds[b], self.unit, self.cutoff + self.skin)
+            rows.choose(self.kinds[a], self.kinds[b], self.unit[0], self.cutoff + self.skin)

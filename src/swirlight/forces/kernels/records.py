@@ -12,7 +12,7 @@ times; the records of the copies follow those of the bodies, and fractions are o
 import numpy as np
 
 from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.kernels.lowlevel import at, streamlined16
+from swirlight.forces.kernels.lowlevel import at, pick, streamlined16
 
 WHOLE = 4294967296.0  # 2³²
 
@@ -81,11 +81,11 @@ def _copy(records, centres, row, copy, x, y, z, repeat):
 
 
 @kernel(fast=True)
-def _distances(other, first, last, x, y, z, unit, distance2):
-    """Squared distances of a stretch of places to one place, all in fractions."""
+def _distances(other, first, count, x, y, z, unit, distance2):
+    """Squared distances [nm²] of a stretch of places to one place, all given in fractions."""
     streamlined16()
     ux, uy, uz = unit[0], unit[1], unit[2]
-    for m in range(last - first):
+    for m in range(((count + 15) >> 4) << 4):
         dx = np.float32(np.int32(other[0, first + m] - x)) * ux
         dy = np.float32(np.int32(other[1, first + m] - y)) * uy
         dz = np.float32(np.int32(other[2, first + m] - z)) * uz
@@ -100,33 +100,33 @@ def find_candidates(own, own_cell, other, cell_start, slot, cells, unit, reach2,
     own : (n, 3), other : (3, m) int32 fractions of the repeated box, `other` cell by cell, x
     fastest; own_cell : (n, 3); cell_start : (cells + 1,); cells : (3,), of half the reach.
     slot : (m,) the rows of the records of `other`; same : whether row i is body i itself.
+    Both `other` and `slot` go on for 16 more, never listed, for the sake of whole vectors.
     unit : (3,) float32 nm per unit of the fractions.
     found : (n, capacity) int32 rows of the records; counts : (n,) how many there are, which
         may be more than fit: then the list must be made again with more capacity.
     """
     n, capacity = found.shape
     width = np.minimum(cells, 5)  # two cells on either side, but none twice
+    nought = np.float32(0.0)
     for chunk in numba.prange(CHUNKS):
         distance2 = np.empty(slot.shape[0], np.float32)
-        row = np.empty(slot.shape[0] + 1, np.int32)
+        row = np.empty(slot.shape[0], np.int32)
         for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
             count = 0
-            first = own_cell[i, 0] - 2
             for zy in range(width[2] * width[1]):
                 z = (own_cell[i, 2] - 2 + zy // width[1]) % cells[2]
                 y = (own_cell[i, 1] - 2 + zy % width[1]) % cells[1]
                 line = (z * cells[1] + y) * cells[0]
                 # The cells along x are contiguous, in one stretch or in two.
-                begin = first % cells[0]
+                begin = (own_cell[i, 0] - 2) % cells[0]
                 end = min(begin + width[0], cells[0])
-                rest = begin + width[0] - end
-                for a, b in ((begin, end), (0, rest)):
+                for a, b in ((begin, end), (0, begin + width[0] - end)):
                     start, stop = cell_start[line + a], cell_start[line + b]
-                    _distances(other, start, stop, own[i, 0], own[i, 1], own[i, 2], unit,
+                    _distances(other, start, stop - start, own[i, 0], own[i, 1], own[i, 2], unit,
                                distance2)
-                    for m in range(stop - start):
-                        row[count] = slot[start + m]
-                        count += distance2[m] < reach2
+                    for m in range(0, stop - start, 16):
+                        count = pick(slot[start:], m, stop - start, distance2, nought, reach2,
+                                     np.int32(1), row, count)
             kept = 0
             for k in range(count):
                 if kept < capacity:
@@ -197,6 +197,7 @@ def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_
     entries : (n, capacity) int32 starts of records, capacity as of `found`; counts : (n,).
     """
     n, capacity = entries.shape
+    nought = own.dtype.type(0.0)
     for chunk in numba.prange(CHUNKS):
         apart = np.empty((4, capacity), own.dtype)
         four = np.empty((4, 3), own.dtype)
@@ -207,11 +208,9 @@ def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_
             _separations(own, own_centre, other, other_centre, mine, words, row, total, edge,
                          apart)
             count = left = 0
-            for k in range(total):
-                entries[i, count] = row[k] * words
-                count += apart[3, k] < near2
-                unsure[left] = row[k]
-                left += (apart[3, k] >= near2) & (apart[3, k] < far2)
+            for k in range(0, total, 16):
+                count = pick(row, k, total, apart[3], nought, near2, words, entries[i], count)
+                left = pick(row, k, total, apart[3], near2, far2, np.int32(1), unsure, left)
             _separations(own, own_centre, other, other_centre, mine, words, unsure, left, edge,
                          apart)
             for first in range(0, own_sites, 4):
@@ -221,7 +220,6 @@ def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_
                         four[s, k] = own[word + k]
                 for b in range(other_sites):
                     _approach(other, 3 + 3 * b, words, unsure, left, four, apart)
-            for k in range(left):
-                entries[i, count] = unsure[k] * words
-                count += apart[3, k] < near2
+            for k in range(0, left, 16):
+                count = pick(unsure, k, left, apart[3], nought, near2, words, entries[i], count)
             counts[i] = count

@@ -61,7 +61,7 @@ import numba
 import numpy as np
 
 from swirlight.compiled import CHUNKS, kernel
-from swirlight.forces.kernels.lowlevel import at, streamlined{lanes} as streamlined
+from swirlight.forces.kernels.lowlevel import at, fused, streamlined{lanes} as streamlined
 
 real = np.{real}
 zero, half, one = real(0.0), real(0.5), real(1.0)
@@ -148,7 +148,8 @@ def _coulomb(pattern):
 
 def _lennard_jones(pattern, first):
     """Lines that set v and u, from the pair's numbers from `first` on."""
-    lines = ["s = w2 * w2 * w2",
+    lines = ["w2 = w2 + w2 * (one - r2 * w2)",
+             "s = w2 * w2 * w2",
              f"a, b = pair[{first}] * s, pair[{first + 1}]",
              "u = s * (a - b)",
              "v = real(6.0) * s * w2 * (a + a - b)"]
@@ -195,7 +196,9 @@ def _before(pattern):
     lines = [f"{name} = ({''.join(f'screening[{row}, {k}], ' for k in range(pattern.degree + 1))})"
              for name, row in zip("pg", rows, strict=True)]
     lines.append(f"reach = ({', '.join(f'limits[{k}]' for k in range(6))})")
-    lines += [f"edge{k} = edge[{k}]" for k in range(3)]
+    lines += [f"edge{k} = edge[0, {k}]" for k in range(3)]
+    if pattern.real == "float32":
+        lines += [f"rest{k} = edge[1, {k}]" for k in range(3)]
     centre = "own_centre" if pattern.real == "float32" else "own"
     lines += [f"centre{k} = {centre}[mine + {k}]" for k in range(3)]
     for n, (a, b) in enumerate(pattern.pairs):
@@ -215,7 +218,7 @@ def _centres(pattern):
     for k, x in enumerate("XYZ"):
         if pattern.real == "float32":
             whole = f"np.int32(at(other_centre, {k}, j) - centre{k})"
-            lines.append(f"{x} = real({whole}) * edge{k}")
+            lines += [f"s = real({whole})", f"{x} = fused(s, edge{k}, s * rest{k})"]
         else:
             lines += [f"s = at(other, {k}, j) - centre{k}",
                       f"{x} = (s - np.floor(s + half)) * edge{k}"]
