@@ -20,7 +20,7 @@ from swirlight.forces.neighbours import Neighbours, interacting_kinds
 
 # Of the polynomials that replace erfc, relative to their largest value: of the order of the
 # rounding of the sums they enter.
-TOLERANCE = {"mixed": 5e-8, "double": 1e-14}
+TOLERANCE = {"mixed": 5e-8, "double": 2e-14}
 REAL = {"mixed": np.float32, "double": np.float64}
 GROUP = 6  # sites per kernel call; larger bodies are taken in groups
 
