@@ -33,7 +33,7 @@ def lattice_positions(count, box, random):
 
 
 def _cells(count, box):
-    """Cells along each edge: the fewest that hold `count` bodies, as nearly cubic as the box allows."""
+    """Cells along each edge: few, nearly cubic, and enough for `count` bodies."""
     ideal = box * (count / 4.0 / np.prod(box)) ** (1 / 3)
     near = [range(max(1, int(np.floor(x)) - 1), int(np.ceil(x)) + 2) for x in ideal]
     enough = [

@@ -8,7 +8,11 @@ the cluster: the disk is the truth.
 import contextlib
 import os
 import signal
+import time
 
+from swirlight.errors import RunError
+
+PATIENCE = 60.0  # s without any worker process before the driver gives up
 ONE_THREAD = {
     "NUMBA_NUM_THREADS": "1",
     "OMP_NUM_THREADS": "1",
@@ -44,7 +48,13 @@ def _drive(client, function, tasks, each, tick):
         client.submit(function, *task, pure=False, retries=0, priority=-i)
         for i, task in enumerate(tasks)
     }
+    seen = time.monotonic()
     while pending:
+        if client.scheduler_info(n_workers=1)["workers"]:
+            seen = time.monotonic()
+        elif time.monotonic() - seen > PATIENCE:
+            raise RunError("every worker process has died and none could be started again;"
+                           " what is complete is kept: see what kills them, then resume")
         try:
             done = wait(pending, timeout=1.0, return_when="FIRST_COMPLETED").done
         except TimeoutError:

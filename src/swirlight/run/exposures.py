@@ -47,7 +47,8 @@ def list_exposures(config, pulses):
         kinds, starts = config.exposures.kinds, config.exposures.starts
         wanted = config.exposures.carrier_phases
     phases = {
-        kind: wanted if any(p.coupling == "resolved" for p in KINDS[kind](pulses)) else 1 for kind in kinds
+        kind: wanted if any(p.coupling == "resolved" for p in KINDS[kind](pulses)) else 1
+        for kind in kinds
     }
     return [
         Exposure(kind, start, phase, phases[kind])

@@ -6,8 +6,6 @@ originals were edited or lost, and on another machine.
 
 import pathlib
 
-
-
 from swirlight import __version__
 from swirlight.config import load_config
 from swirlight.config.reader import yaml_text

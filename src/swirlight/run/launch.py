@@ -11,9 +11,7 @@ in a folder that holds some of them.
 import os
 import time
 
-import numpy as np
-
-from swirlight.config import config_hash, physical_differences
+from swirlight.config import physical_differences, physical_part
 from swirlight.errors import InputError, RunError, StopRequested
 from swirlight.run import progress as displays
 from swirlight.run.executor import side_by_side
@@ -57,10 +55,10 @@ def resume(path, progress=True, threads=None, config=None):
     own = folder.config()
     if config is not None and (different := physical_differences(own, config)):
         raise InputError(f"{path}: was begun with other physics:\n" + "\n".join(different))
-    recorded = (read_json(folder.work / "state.json") or {}).get("config_hash")
-    if recorded is not None and recorded != config_hash(own):
-        raise InputError(f"{folder.config_file}: was changed after the run began; put it back,"
-                         " or launch it as a run of its own")
+    begun = read_json(folder.work / "physics.json")
+    if begun is not None and (different := physical_differences(begun, physical_part(own))):
+        raise InputError(f"{folder.config_file}: was changed after the run began; put it back, or"
+                         " launch it as a run of its own:\n" + "\n".join(different))
     if folder.summary.is_file() and not folder.work.is_dir():
         display.say(f"{path}: nothing to do, the run is complete")
         return open_run(folder.root)
@@ -87,9 +85,9 @@ class _Conductor:
         self.folder, self.display, self.cores = folder, display, cores
         self.work = Work(folder)
         self.timings = {}
-        path = folder.work / "state.json"
+        path = folder.work / "physics.json"
         if not path.is_file():
-            write_json(path, {"config_hash": config_hash(self.work.config)})
+            write_json(path, physical_part(self.work.config))
         if resumed:
             self._say_where()
 

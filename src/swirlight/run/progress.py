@@ -67,7 +67,8 @@ class LiveLine(PlainLines):
 
         super().__init__(stream)
         self._bar = Progress(
-            TextColumn("{task.description}"), BarColumn(bar_width=30), TextColumn("{task.fields[line]}"),
+            TextColumn("{task.description}"), BarColumn(bar_width=30),
+            TextColumn("{task.fields[line]}"),
             console=Console(file=self.stream), transient=True,
         )
         self._task = None
@@ -116,4 +117,6 @@ def _line(done, total, pace, facts):
 def _clock(seconds):
     minutes, seconds = divmod(int(round(seconds)), 60)
     hours, minutes = divmod(minutes, 60)
-    return f"{hours} h {minutes:02d} min" if hours else f"{minutes} min {seconds:02d} s" if minutes else f"{seconds} s"
+    if hours:
+        return f"{hours} h {minutes:02d} min"
+    return f"{minutes} min {seconds:02d} s" if minutes else f"{seconds} s"

@@ -79,7 +79,8 @@ def curves(run, exposures, pulses):
             return {}
         first = run[exposures[0].kind, exposures[0].start, exposures[0].phase]
         times = first["light_impulse"].times
-        found[signal] = Curves(times, *even_odd(rows["plus"], rows["minus"], rows.get("dark")), unit)
+        parts = even_odd(rows["plus"], rows["minus"], rows.get("dark"))
+        found[signal] = Curves(times, *parts, unit)
     return found
 
 

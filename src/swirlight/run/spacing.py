@@ -6,7 +6,8 @@ angular momentum and of P1 and P2 of a body axis, of each species, seen while eq
 
 import numpy as np
 
-WINDOW = 5.0  # correlation times: the sum ends there (Madras & Sokal, J. Stat. Phys. 50, 109 (1988))
+# Correlation times after which the sum ends (Madras & Sokal, J. Stat. Phys. 50, 109 (1988)).
+WINDOW = 5.0
 SAFETY = 3.0
 WATCHED = 64  # bodies of each species that are watched
 

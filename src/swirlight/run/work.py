@@ -75,7 +75,7 @@ class Work:
 
         Raises RunError when equilibration was too short to see how long memory lasts.
         """
-        if self.config.exposures is None:
+        if self.config.exposures is None or self.starts == 1:
             return {"value": 0.0, "found": {}}
         asked = self.config.exposures.spacing
         if asked is not None:
@@ -120,7 +120,7 @@ class Work:
                 self._save_start(0, state)
 
         legs = tuple(self._leg(stage, (), self._steady_bias) for stage in unlit)
-        watch = self.config.exposures is not None and self.config.exposures.spacing is None
+        watch = self.starts > 1 and self.config.exposures.spacing is None
         return self._trajectory("equilibrium", legs, False, {"kind": "equilibrium"}, leg_done,
                                 watch)
 
