@@ -99,11 +99,6 @@ class Run:
         return read_json(self.path / "summary.json")
 
     @property
-    def progress(self):
-        """Content of progress.json, or None."""
-        return read_json(self.path / "progress.json")
-
-    @property
     def config_text(self):
         """The config as resolved. Raises InputError if it is missing."""
         try:

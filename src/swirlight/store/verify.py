@@ -44,11 +44,10 @@ def _verify_folder(folder):
                  for path in checkpoints if not digest_is_right(path)]
     if not (folder / "config.yaml").is_file():
         problems.append(f"{folder}: has no config.yaml")
-    for name in ("summary.json", "progress.json"):
-        try:
-            read_json(folder / name)
-        except InputError as error:
-            problems.append(str(error))
+    try:
+        read_json(folder / "summary.json")
+    except InputError as error:
+        problems.append(str(error))
     for segment in sorted({path.parent for path in segments}):
         numbers = [int(p.stem) for p in sorted(segment.glob("*.h5"))]
         if numbers != list(range(len(numbers))):
