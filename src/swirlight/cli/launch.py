@@ -7,10 +7,12 @@ import typer
 
 Set = Annotated[
     list[str],
-    typer.Option("--set", metavar="KEY=VALUE", help='Override one key, e.g. light[0].duration="2 ps".'),
+    typer.Option("--set", metavar="KEY=VALUE",
+                 help='Override one key, e.g. light[0].duration="2 ps".'),
 ]
 Threads = Annotated[
-    int | None, typer.Option("--threads", min=1, help="Cores to use at most; all of them if left out.")
+    int | None,
+    typer.Option("--threads", min=1, help="Cores to use at most; all of them if left out."),
 ]
 
 

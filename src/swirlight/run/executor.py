@@ -10,7 +10,7 @@ import os
 import signal
 import time
 
-from swirlight.errors import RunError
+from swirlight.errors import RunError, StopRequested
 
 PATIENCE = 60.0  # s without any worker process before the driver gives up
 ONE_THREAD = {
@@ -22,12 +22,15 @@ ONE_THREAD = {
 }
 
 
-def side_by_side(function, tasks, cores, each=lambda record: None, tick=lambda: None):
+def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=lambda: None):
     """Call ``function(*task)`` for every task; hand each result to `each` as it arrives.
 
     cores : how many run at once; with one core (or one task) they run here, in order.
+    stop : StopFile; tasks look at it themselves, the driver only when no worker is left.
     tick : called about once a second in the driver while workers are busy.
-    A task that raises does not stop the others: its exception is handed to `each`.
+    A task that raises does not stop the others: its exception is handed to `each`, and so is
+    that of a task whose worker dies again and again. Raises RunError when no worker process
+    can be kept alive.
     """
     if cores == 1 or len(tasks) == 1:
         for task in tasks:
@@ -38,10 +41,10 @@ def side_by_side(function, tasks, cores, each=lambda record: None, tick=lambda: 
             each(record)
         return
     with _cluster(min(cores, len(tasks))) as client:
-        _drive(client, function, tasks, each, tick)
+        _drive(client, function, tasks, stop, each, tick)
 
 
-def _drive(client, function, tasks, each, tick):
+def _drive(client, function, tasks, stop, each, tick):
     from dask.distributed import wait
 
     pending = {
@@ -52,6 +55,8 @@ def _drive(client, function, tasks, each, tick):
     while pending:
         if client.scheduler_info(n_workers=1)["workers"]:
             seen = time.monotonic()
+        elif stop.look():
+            raise StopRequested(0, stop.look())
         elif time.monotonic() - seen > PATIENCE:
             raise RunError("every worker process has died and none could be started again;"
                            " what is complete is kept: see what kills them, then resume")

@@ -11,18 +11,22 @@ in a folder that holds some of them.
 import os
 import time
 
+import numpy as np
+
 from swirlight.config import physical_differences, physical_part
 from swirlight.errors import InputError, RunError, StopRequested
 from swirlight.run import progress as displays
 from swirlight.run.executor import side_by_side
 from swirlight.run.folder import RunFolder, create
 from swirlight.run.plan import check_config
+from swirlight.run.rates import record_rate, workload
 from swirlight.run.stop import Signals
 from swirlight.run.summary import write_summary
 from swirlight.run.work import Work, expose
 from swirlight.store.durable import remove_folder, write_json
 from swirlight.store.lock import FolderLock
 from swirlight.store.run import open_run, read_json
+from swirlight.store.start import load_state
 
 
 def launch(config, into=None, progress=True, threads=None):
@@ -110,6 +114,7 @@ class _Conductor:
         for name, trajectory, begin in self.work.preparations():
             self.display.phase(name, trajectory.steps)
             trajectory.travel(begin, self.folder.stop, self._show)
+            self._remember_pace(trajectory.pace, self.cores)
             self.display.finish()
 
     def _show(self, facts):
@@ -122,13 +127,15 @@ class _Conductor:
             return
         steps = self.work.exposure_steps
         self.display.phase(f"expose ({len(todo)} trajectories)", steps * len(todo))
-        self._left, self._failed, self._stopped = todo, [], None
+        self._left, self._failed, self._stopped, self._paces = todo, [], None, []
         side_by_side(
             expose, [(str(self.folder.root), e.name) for e in todo], self.cores,
-            self._take, self._tick,
+            self.folder.stop, self._take, self._tick,
         )
         if self._stopped is not None:
             raise self._stopped
+        if self._paces:
+            self._remember_pace(float(np.median(self._paces)), self.cores if len(todo) == 1 else 1)
         if self._failed:
             raise RunError("\n".join(
                 [f"{len(self._failed)} of {len(todo)} trajectories could not be finished:"]
@@ -144,6 +151,8 @@ class _Conductor:
             self._failed.append(("?", f"{type(record).__name__}: {record}"))
         elif record["failed"]:
             self._failed.append((record["name"], record["failed"]))
+        elif record["pace"]:
+            self._paces.append(record["pace"])
         self._tick()
 
     def _tick(self):
@@ -160,6 +169,11 @@ class _Conductor:
         latest = facts[-1] if facts else {}
         self.display.update(done, temperature=latest.get("temperature"),
                             residual=latest.get("residual"))
+
+    def _remember_pace(self, pace, threads):
+        """For the next estimate of `check`."""
+        box = load_state(self.folder.start(0)).box
+        record_rate(workload(self.work.system, box, threads), pace)
 
     def _say_where(self):
         total = len(self.work.exposures)

@@ -71,6 +71,7 @@ class Trajectory:
     header : a function box -> store Header.
     workdir, final : where it is kept under way and when complete.
     leg_done : called with (leg index, state) as each leg ends, before anything is removed.
+    pace : steps per second of the last `travel`, everything included.
     """
 
     system: object
@@ -81,6 +82,7 @@ class Trajectory:
     workdir: object
     final: object
     leg_done: object = field(default=lambda index, state: None)
+    pace: float = 0.0
 
     @property
     def steps(self):
@@ -115,11 +117,12 @@ class Trajectory:
             writer = TrajectoryWriter.create(self.workdir, header, size)
             at, self._tick = (0, 0), 0
         self._writer, self._stop, self._report = writer, stop, report
-        self._reported = 0.0
+        self._reported, began, first = 0.0, time.monotonic(), state.step
         try:
             for index in range(at[0], len(self.legs)):
                 first = index == at[0]
                 self._run_leg(state, index, at[1] if first else 0, saved if first else None)
+            self.pace = (state.step - first) / (time.monotonic() - began)
             writer.finish(self.final)
         finally:
             writer.close()

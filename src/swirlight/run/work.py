@@ -178,12 +178,13 @@ def expose(root, name):
     """Carry one exposure to its end; the task of a worker process.
 
     root : the run folder; name : of the exposure.
-    Returns {"name", "failed": reason or None}; a stop request is raised as StopRequested.
+    Returns {"name", "failed": reason or None, "pace": steps per second or None if there was
+    nothing to do}; a stop request is raised as StopRequested.
     """
     folder = RunFolder(root)
     if folder.final(name).is_file():
         remove_folder(folder.working(name))
-        return {"name": name, "failed": None}
+        return {"name": name, "failed": None, "pace": None}
     if folder.stop.look():
         raise StopRequested(0, folder.stop.look())
     work = _known.get(root) or _known.setdefault(root, Work(folder))
@@ -192,5 +193,5 @@ def expose(root, name):
         trajectory.travel(begin, folder.stop)
     except RunError as error:
         write_json(pathlib.Path(folder.failure(name)), {"name": name, "reason": str(error)})
-        return {"name": name, "failed": str(error)}
-    return {"name": name, "failed": None}
+        return {"name": name, "failed": str(error), "pace": None}
+    return {"name": name, "failed": None, "pace": trajectory.pace}
