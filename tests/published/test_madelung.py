@@ -29,7 +29,7 @@ def crystal(name, cells=2):
 @pytest.mark.parametrize("name", MADELUNG)
 @pytest.mark.parametrize("method, tolerance, accuracy", [
     ("direct-ewald", 1e-12, 1e-8), ("mesh-ewald", 1e-6, 1e-5)])
-def test_madelung_constant(name, method, tolerance, accuracy):
+def test_madelung_constant(name, method, tolerance, accuracy, table):
     plus, minus, box, distance = crystal(name)
     ions = tuple(body(label, [[0, 0, 0]], [20.0], [q], [0.2], [0.0])
                  for label, q in (("cation", 1.0), ("anion", -1.0)))
@@ -40,7 +40,8 @@ def test_madelung_constant(name, method, tolerance, accuracy):
     orientation = np.tile([1.0, 0, 0, 0], (len(position), 1))
     found = ForceField(system, box).evaluate(position, orientation, box)
     constant = -found.energy / len(plus) * distance / COULOMB
-    print(f"{name} by {method}: {constant:.12f}, off by {constant - MADELUNG[name]:.1e}")
+    table(f"Madelung constant of {name}, {method}: error", f"{constant - MADELUNG[name]:.1e}",
+          accuracy)
     assert constant == pytest.approx(MADELUNG[name], abs=accuracy)
     scale = COULOMB / distance**2
     assert np.abs(found.force).max() < max(tolerance, 1e-10) * scale  # no force in a crystal

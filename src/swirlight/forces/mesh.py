@@ -34,7 +34,8 @@ def _sort(place, box, mesh, cell, inside, start, rank):
             u = (u - np.floor(u)) * mesh[a]
             n = int(u)
             inside[m, a] = u - n
-            cell[m, a] = n if n < mesh[a] else 0  # u - floor(u) may round to 1
+            # u − floor(u) may round to 1, and a place that is no number has no cell.
+            cell[m, a] = n if 0 <= n < mesh[a] else 0
         start[cell[m, 0]] += 1
     for x in range(mesh[0]):
         start[x + 1] += start[x]
