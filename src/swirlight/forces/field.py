@@ -59,6 +59,11 @@ class ForceField:
         self._place, self._push = np.empty((2, len(self._charged), 3))
         self._force, self._torque = np.empty((2, system.bodies, 3))
         self._freedom = system.freedom
+        self._own = corrections.self_energy(system, self.law)
+        self._inner = corrections.intramolecular_energy(system, self.law)
+        # Both go as 1/V when only the box changes.
+        self._tail_energy = corrections.tail_energy(system, box) * box.prod()
+        self._tail_virial = corrections.tail_virial(system, box) * box.prod()
         self._drifts = (isinstance(self.reciprocal, MeshEwald)
                         or system.interactions.precision == "mixed")
 
@@ -98,15 +103,14 @@ class ForceField:
         wave_energy, wave_virial = waves or (0.0, 0.0)
         terms = self._terms(sums, wave_energy, box)
         virial = (float(np.sum(sums.virial)) + wave_virial - lever_work
-                  + corrections.tail_virial(self.system, box))
+                  + self._tail_virial / np.prod(box))
         return Forces(force, torque, sum(terms.values()), terms, virial)
 
     def _terms(self, sums, wave_energy, box):
-        own = corrections.self_energy(self.system, self.law)
-        inner = corrections.intramolecular_energy(self.system, self.law)
+        own, inner = self._own, self._inner
         continuum = self.law.kind == "reaction-field"
         return dict(zip(TERMS, (
-            float(sums.lennard_jones), corrections.tail_energy(self.system, box),
+            float(sums.lennard_jones), float(self._tail_energy / np.prod(box)),
             float(sums.coulomb), wave_energy, 0.0 if continuum else own,
             0.0 if continuum else inner, own + inner if continuum else 0.0,
         ), strict=True))
