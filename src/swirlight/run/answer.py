@@ -50,15 +50,24 @@ def _response(response):
                 lines.append(
                     f"  {name:<16} {NAMES[signal]:<17} {f['value']:+.3e} ±"
                     f" {_number(f['error'])}{unit.replace('hbar', 'ħ')}"
-                    f"  (p = {_number(f['p'])}): {verdict(f)}"
+                    f"  ({_p(f['p'])}): {verdict(f)}"
                 )
-    lines.append(f"Does the pulse turn these molecules? Light impulse: {verdict(impulse)}.")
+    spin = response["angular_momentum"]["odd"]
+    lines.append("Does the pulse turn these molecules? The turning it delivers (light impulse):"
+                 f" {verdict(impulse)}; the turning they have then (angular momentum):"
+                 f" {verdict(spin)}.")
     return lines
 
 
 def _averages(averages):
     return [f"  {name.replace('_', ' '):<17} {f['value']:.5g} ± {_number(f['error'])} {f['unit']}"
             for name, f in averages.items()]
+
+
+def _p(value):
+    if value is None:
+        return "p unknown"
+    return f"p = {value:.1e}" if value >= 1e-12 else "p < 1e-12"
 
 
 def _number(value):
