@@ -58,8 +58,9 @@ def add_to_bodies(site_force, lever, site, body, force, torque):
     work = 0.0
     for m in range(site.shape[0]):
         i = body[m]
-        fx, fy, fz = site_force[m]
-        dx, dy, dz = lever[site[m]]
+        s = site[m]
+        fx, fy, fz = site_force[m, 0], site_force[m, 1], site_force[m, 2]
+        dx, dy, dz = lever[s, 0], lever[s, 1], lever[s, 2]
         force[i, 0] += fx
         force[i, 1] += fy
         force[i, 2] += fz
