@@ -7,7 +7,7 @@ from swirlight.compiled import numba
 from swirlight.forces.laws import CoulombLaw
 from swirlight.forces.pairs import PairForces
 
-from .plain_pairs import ATOM, FIVE, ION, SPCE, TWO, WEIGHTED, plain_forces, rotation, sample
+from .plain_pairs import FIVE, ION, SPCE, TWO, WEIGHTED, plain_forces, rotation, sample
 
 EWALD = CoulombLaw("ewald", 0.9, alpha=3.4)
 LAWS = {
@@ -120,8 +120,8 @@ def test_forces_and_torques_are_differences_of_the_energy(mixture):
         assert np.abs(slopes[1] - torque[body]).max() < 1e-6 * np.sqrt((torque**2).mean())
 
 
-def test_virial_is_the_slope_under_scaling_of_the_centres(mixture):
-    system, position, orientation, box = mixture
+def test_virial_is_the_slope_under_scaling_of_the_centres():
+    system, position, orientation, box = sample([TWO], [90], [1.9, 2.1, 2.0], precision="double")
     law = LAWS["damped shifted"]  # no force at the cutoff, so no jump of the energy
     virial = evaluate(system, law, position, orientation, box)[2].virial
     step = 1e-5
@@ -135,9 +135,9 @@ def test_virial_is_the_slope_under_scaling_of_the_centres(mixture):
         assert abs(slope - virial[k]) < 1e-6 * np.abs(virial).max()
 
 
-def test_energies_do_not_change_the_forces(mixture):
+def test_energies_do_not_change_the_forces():
     """The two kernels differ in rounding only."""
-    system, *where = mixture
+    system, *where = sample([SPCE], [216], [1.864] * 3, precision="double")
     with_energies = evaluate(system, EWALD, *where)
     without = evaluate(system, EWALD, *where, energies=False)
     assert without[2] is None
@@ -157,29 +157,18 @@ def test_same_bits_for_any_number_of_threads():
     assert results[0][2].coulomb == results[1][2].coulomb
 
 
-def test_atoms_ions_and_sites_that_do_nothing():
-    """Single sites, a species without charge among ions, a site that is only a mass."""
-    system, *where = sample([ATOM, ION, WEIGHTED], [30, 8, 40], [1.9, 1.8, 2.0],
-                            precision="double")
+def test_ions_and_sites_that_do_nothing():
+    """Single charged sites, and bodies of which one site is only a mass."""
+    system, *where = sample([ION, WEIGHTED], [30, 40], [1.9, 1.8, 2.0], precision="double")
     assert_plain(system, EWALD, *where, tolerance=1e-11)
-    assert (evaluate(system, EWALD, *where)[1][:38] == 0.0).all()
+    assert (evaluate(system, EWALD, *where)[1][:30] == 0.0).all()
 
 
-def test_bodies_of_many_sites_are_taken_in_groups():
-    """Eight sites, more than one kernel call takes."""
-    eight = _joined(FIVE, 3)
-    system, *where = sample([eight], [30], [1.9, 1.9, 2.0], precision="double")
+def test_bodies_of_many_sites_are_taken_in_groups(monkeypatch):
+    """Two sites a kernel call, on bodies of five."""
+    monkeypatch.setattr("swirlight.forces.pairs.GROUP", 2)
+    system, *where = sample([FIVE], [30], [1.9, 1.9, 2.0], precision="double")
     assert_plain(system, LAWS["none"], *where, tolerance=1e-11)
-
-
-def _joined(species, more):
-    """The species and, 0.15 nm along z, its first sites again, in the joint centre of mass."""
-    from .plain_pairs import body
-
-    places = np.concatenate([species.sites, species.sites[:more] + [0, 0, 0.15]])
-    twice = [np.concatenate([v, v[:more]]) for v in
-             (species.mass, species.charge, species.sigma, species.epsilon)]
-    return body("joined", places, *twice)
 
 
 def test_bare_dimer_from_the_reaction_field_of_vacuum():

@@ -77,6 +77,7 @@ class Grid:
         # More cells than bodies would only be empty.
         most = max(4, int(np.ceil((8 * bodies * np.prod(repeat)) ** (1 / 3))))
         self.cells = np.clip(np.floor(2 * edge / reach), 1, most).astype(int)
+        self.width = np.minimum(self.cells, 5)
         self.unit = (edge / kernels.WHOLE).astype(np.float32)
 
     def fractions(self, position):
@@ -106,7 +107,7 @@ class Rows:
     """The lists of one kind's bodies against another's."""
 
     def __init__(self):
-        self.capacity = 16
+        self.capacity = LANES
         self.entries = self.counts = None
 
     def find(self, own, other, grid, reach, same):
@@ -121,7 +122,7 @@ class Rows:
             self.found = np.zeros((own.count, self.capacity), np.int32)
             self.found_counts = np.zeros(own.count, np.int32)
             kernels.find_candidates(own.fractions, grid.cell(own.fractions), sorted_place, start,
-                                    slot, grid.cells, grid.unit,
+                                    slot, grid.cells, grid.width, grid.unit,
                                     np.float32((reach + FLOAT_SLACK) ** 2), same,
                                     self.found, self.found_counts)
             most = int(self.found_counts.max())
@@ -183,7 +184,7 @@ class Neighbours:
         """
         place_sites(self.system, position, orientation, self.lever)
         if self.box is None or not np.array_equal(box, self.box):
-            self._make_outer(position, box)
+            self.make_outer(position, box)
         else:
             moved = self._place(position, box)
             self.calls += moved != self.last_moved  # a call at the same places is no new one
@@ -193,8 +194,8 @@ class Neighbours:
             self._adapt_skin(2 * moved)
             drift = np.sqrt(((position - self.outer_position) ** 2).sum(axis=1).max())
             if self.skin + 2 * drift > self.outer_skin:
-                self._make_outer(position, box)
-        self._choose_inner(position, orientation)
+                self.make_outer(position, box)
+        self.choose_inner(position, orientation)
 
     def memory(self):
         """What `restore` needs to make the same lists again: a dict of arrays."""
@@ -216,8 +217,8 @@ class Neighbours:
         self.skin, outer_skin, calls, last_moved = (float(value) for value in memory["skins"])
         position, orientation = memory["inner_position"], memory["inner_orientation"]
         place_sites(self.system, position, orientation, self.lever)
-        self._make_outer(memory["outer_position"], memory["box"], outer_skin)
-        self._choose_inner(position, orientation)
+        self.make_outer(memory["outer_position"], memory["box"], outer_skin)
+        self.choose_inner(position, orientation)
         self.calls, self.last_moved = int(calls), last_moved
 
     def _adapt_skin(self, moved):
@@ -242,7 +243,7 @@ class Neighbours:
             furthest = max(furthest, moved)
         return np.sqrt(furthest)
 
-    def _make_outer(self, position, box, outer_skin=None):
+    def make_outer(self, position, box, outer_skin=None):
         """Sort the bodies into cells and list all with centres near each other."""
         if not np.isfinite(position).all():
             raise RunError(LOST)
@@ -286,7 +287,7 @@ class Neighbours:
         kind.records = np.zeros(shape, self.dtype)
         kind.reference = np.zeros((*kind.site.shape, 3))
 
-    def _choose_inner(self, position, orientation):
+    def choose_inner(self, position, orientation):
         """List, of the outer list, the bodies that have sites near each other."""
         self.inner_position, self.inner_orientation = np.array(position), np.array(orientation)
         self.calls, self.last_moved = 0, 0.0

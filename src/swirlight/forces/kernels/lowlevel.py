@@ -2,7 +2,8 @@
 
 `at` reads an array at a 32-bit index without numba's test for negative indices, so that a
 loop over neighbours becomes 32-bit gathers. `streamlined` promises the compiler that the
-arrays a function gets do not overlap where it writes, and asks for the widest vectors.
+arrays a function gets do not overlap where it writes, and asks for the widest vectors in
+its first innermost loop.
 `pick` copies those of 16 integers that pass a test: newer processors do it in one instruction.
 Uncompiled (NUMBA_DISABLE_JIT=1) the plain forms at the end stand in.
 """
@@ -64,6 +65,7 @@ def _streamlining(lanes):
                 jump = plain_branch(target)
                 if target.is_terminated:  # already written, so this jump closes a loop
                     jump.set_metadata("llvm.loop", _loop_hint(builder.module, lanes))
+                    del builder.branch  # the loops around it stay as they are
                 return jump
 
             builder.branch = branch

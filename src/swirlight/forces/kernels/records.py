@@ -92,13 +92,35 @@ def _distances(other, first, count, x, y, z, unit, distance2):
         distance2[m] = dx * dx + dy * dy + dz * dz
 
 
+@kernel
+def _near_one(place, cell, other, cell_start, slot, cells, width, unit, reach2, distance2, row):
+    """Rows of the records near one place, written to `row`; how many they are."""
+    nought, one, count = np.float32(0.0), np.int32(1), 0
+    # The cells along x are contiguous, in one stretch or in two.
+    begin = (cell[0] - 2) % cells[0]
+    end = min(begin + width[0], cells[0])
+    for zy in range(width[2] * width[1]):
+        z = (cell[2] - 2 + zy // width[1]) % cells[2]
+        y = (cell[1] - 2 + zy % width[1]) % cells[1]
+        line = (z * cells[1] + y) * cells[0]
+        for part in range(2):
+            start = cell_start[line + (begin if part == 0 else 0)]
+            stop = cell_start[line + (end if part == 0 else begin + width[0] - end)]
+            _distances(other, start, stop - start, place[0], place[1], place[2], unit, distance2)
+            stretch = slot[start:]
+            for m in range(0, stop - start, 16):
+                count = pick(stretch, m, stop - start, distance2, nought, reach2, one, row, count)
+    return count
+
+
 @kernel(parallel=True)
-def find_candidates(own, own_cell, other, cell_start, slot, cells, unit, reach2, same, found,
-                    counts):
+def find_candidates(own, own_cell, other, cell_start, slot, cells, width, unit, reach2, same,
+                    found, counts):
     """Bodies of one kind within reach of those of another, centre to centre.
 
     own : (n, 3), other : (3, m) int32 fractions of the repeated box, `other` cell by cell, x
-    fastest; own_cell : (n, 3); cell_start : (cells + 1,); cells : (3,), of half the reach.
+    fastest; own_cell : (n, 3); cell_start : (cells + 1,); cells : (3,), of half the reach;
+    width : (3,) how many of them are searched, two on either side but none twice.
     slot : (m,) the rows of the records of `other`; same : whether row i is body i itself.
     Both `other` and `slot` go on for 16 more, never listed, for the sake of whole vectors.
     unit : (3,) float32 nm per unit of the fractions.
@@ -106,27 +128,12 @@ def find_candidates(own, own_cell, other, cell_start, slot, cells, unit, reach2,
         may be more than fit: then the list must be made again with more capacity.
     """
     n, capacity = found.shape
-    width = np.minimum(cells, 5)  # two cells on either side, but none twice
-    nought = np.float32(0.0)
     for chunk in numba.prange(CHUNKS):
         distance2 = np.empty(slot.shape[0], np.float32)
         row = np.empty(slot.shape[0], np.int32)
         for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
-            count = 0
-            for zy in range(width[2] * width[1]):
-                z = (own_cell[i, 2] - 2 + zy // width[1]) % cells[2]
-                y = (own_cell[i, 1] - 2 + zy % width[1]) % cells[1]
-                line = (z * cells[1] + y) * cells[0]
-                # The cells along x are contiguous, in one stretch or in two.
-                begin = (own_cell[i, 0] - 2) % cells[0]
-                end = min(begin + width[0], cells[0])
-                for a, b in ((begin, end), (0, begin + width[0] - end)):
-                    start, stop = cell_start[line + a], cell_start[line + b]
-                    _distances(other, start, stop - start, own[i, 0], own[i, 1], own[i, 2], unit,
-                               distance2)
-                    for m in range(0, stop - start, 16):
-                        count = pick(slot[start:], m, stop - start, distance2, nought, reach2,
-                                     np.int32(1), row, count)
+            count = _near_one(own[i], own_cell[i], other, cell_start, slot, cells, width, unit,
+                              reach2, distance2, row)
             kept = 0
             for k in range(count):
                 if kept < capacity:
@@ -185,6 +192,30 @@ def _approach(other, site, words, found, count, sites, apart):
         apart[3, k] = a if a < least else least
 
 
+@kernel
+def _keep_one(own, own_centre, other, other_centre, mine, own_sites, other_sites, words, row,
+              total, edge, near2, far2, apart, four, unsure, entries):
+    """The part of a row that is near, written to `entries`; how many they are."""
+    nought, one = own.dtype.type(0.0), np.int32(1)
+    distance2 = apart[3]
+    _separations(own, own_centre, other, other_centre, mine, words, row, total, edge, apart)
+    count = left = 0
+    for k in range(0, total, 16):
+        count = pick(row, k, total, distance2, nought, near2, words, entries, count)
+        left = pick(row, k, total, distance2, near2, far2, one, unsure, left)
+    _separations(own, own_centre, other, other_centre, mine, words, unsure, left, edge, apart)
+    for first in range(0, own_sites, 4):
+        for s in range(4):
+            word = mine + 3 + 3 * min(first + s, own_sites - 1)
+            for k in range(3):
+                four[s, k] = own[word + k]
+        for b in range(other_sites):
+            _approach(other, 3 + 3 * b, words, unsure, left, four, apart)
+    for k in range(0, left, 16):
+        count = pick(unsure, k, left, distance2, nought, near2, words, entries, count)
+    return count
+
+
 @kernel(parallel=True)
 def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_words, words,
               found, found_counts, edge, near2, far2, entries, counts):
@@ -197,29 +228,11 @@ def keep_near(own, own_centre, other, other_centre, own_sites, other_sites, own_
     entries : (n, capacity) int32 starts of records, capacity as of `found`; counts : (n,).
     """
     n, capacity = entries.shape
-    nought = own.dtype.type(0.0)
     for chunk in numba.prange(CHUNKS):
         apart = np.empty((4, capacity), own.dtype)
         four = np.empty((4, 3), own.dtype)
         unsure = np.zeros(capacity, np.int32)
         for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
-            mine = i * own_words
-            row, total = found[i], found_counts[i]
-            _separations(own, own_centre, other, other_centre, mine, words, row, total, edge,
-                         apart)
-            count = left = 0
-            for k in range(0, total, 16):
-                count = pick(row, k, total, apart[3], nought, near2, words, entries[i], count)
-                left = pick(row, k, total, apart[3], near2, far2, np.int32(1), unsure, left)
-            _separations(own, own_centre, other, other_centre, mine, words, unsure, left, edge,
-                         apart)
-            for first in range(0, own_sites, 4):
-                for s in range(4):
-                    word = mine + 3 + 3 * min(first + s, own_sites - 1)
-                    for k in range(3):
-                        four[s, k] = own[word + k]
-                for b in range(other_sites):
-                    _approach(other, 3 + 3 * b, words, unsure, left, four, apart)
-            for k in range(0, left, 16):
-                count = pick(unsure, k, left, apart[3], nought, near2, words, entries[i], count)
-            counts[i] = count
+            counts[i] = _keep_one(own, own_centre, other, other_centre, i * own_words, own_sites,
+                                  other_sites, words, found[i], found_counts[i], edge, near2,
+                                  far2, apart, four, unsure, entries[i])

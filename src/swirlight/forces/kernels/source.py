@@ -76,45 +76,31 @@ def {name}(r2, pair, p, g, limits):
 {body}
 '''
 
-ROW = '''
+ROWS = '''
 
 @kernel(fast=True)
-def row(own, own_centre, other, other_centre, mine, my_sites, its_sites, neighbours, count,
-        edge, pairs, screening, limits, out):
+def some_rows(begin, end, own, own_centre, other, other_centre, my_sites, its_sites, entries,
+              counts, edge, pairs, screening, limits, body, force, torque, sums):
     streamlined()
 {before}
-    for k in range(((count + {fill}) >> {shift}) << {shift}):
+    for i in range(begin, end):
+        mine, count = i * {words}, counts[i]
+{start}
+        for k in range(((count + {fill}) >> {shift}) << {shift}):
+            j = entries[i, k]
 {loop}
 {after}
-'''
 
-DRIVER = '''
 
 @kernel(parallel=True)
 def rows(own, own_centre, other, other_centre, my_sites, its_sites, entries, counts, edge, pairs,
          screening, limits, body, force, torque, sums):
     n = counts.shape[0]
     for chunk in numba.prange(CHUNKS):
-        out = np.empty({out}, real)
-        for i in range(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS):
-            mine = i * {words}
-            row(own, own_centre, other, other_centre, mine, my_sites, its_sites, entries[i],
-                counts[i], edge, pairs, screening, limits, out)
-            b = body[i]
-            for a in range({sites}):
-                x = np.float64(own[mine + my_sites + 3 * a])
-                y = np.float64(own[mine + my_sites + 3 * a + 1])
-                z = np.float64(own[mine + my_sites + 3 * a + 2])
-                fx, fy, fz = np.float64(out[3 * a]), np.float64(out[3 * a + 1]), out[3 * a + 2]
-                force[b, 0] += fx
-                force[b, 1] += fy
-                force[b, 2] += fz
-                torque[b, 0] += y * fz - z * fy
-                torque[b, 1] += z * fx - x * fz
-                torque[b, 2] += x * fy - y * fx
+        some_rows(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS, own, own_centre, other,
+                  other_centre, my_sites, its_sites, entries, counts, edge, pairs, screening,
+                  limits, body, force, torque, sums)
 '''
-
-ROW_SUMS = ("lennard_jones", "coulomb", "virial_x", "virial_y", "virial_z")
 
 # The square root's reciprocal: the compiler makes the processor's estimate and a Newton step
 # of the first; the second starts there and takes a third-order step.
@@ -191,19 +177,25 @@ def _block(lines, indent):
 
 
 def _before(pattern):
-    """Lines ahead of the loop: everything that does not change from neighbour to neighbour."""
+    """Lines ahead of all loops: what does not change from body to body."""
     rows = (0, 1) if pattern.energies else (0, 0)
     lines = [f"{name} = ({''.join(f'screening[{row}, {k}], ' for k in range(pattern.degree + 1))})"
              for name, row in zip("pg", rows, strict=True)]
     lines.append(f"reach = ({', '.join(f'limits[{k}]' for k in range(6))})")
+    lines.append("far = limits[4]")
     lines += [f"edge{k} = edge[0, {k}]" for k in range(3)]
     if pattern.real == "float32":
         lines += [f"rest{k} = edge[1, {k}]" for k in range(3)]
-    centre = "own_centre" if pattern.real == "float32" else "own"
-    lines += [f"centre{k} = {centre}[mine + {k}]" for k in range(3)]
     for n, (a, b) in enumerate(pattern.pairs):
         numbers = "".join(f"pairs[{n}, {k}], " for k in range(5))
         lines.append(f"pair{a}_{b} = ({numbers})")
+    return lines
+
+
+def _start(pattern):
+    """Lines ahead of the loop over the neighbours of one body."""
+    centre = "own_centre" if pattern.real == "float32" else "own"
+    lines = [f"centre{k} = {centre}[mine + {k}]" for k in range(3)]
     for a in range(pattern.own):
         lines += [f"{x}{a} = own[mine + my_sites + {3 * a + k}]" for k, x in enumerate("xyz")]
         lines.append(" = ".join(f"f{x}{a}" for x in "xyz") + " = zero")
@@ -241,7 +233,7 @@ def _site_pair(pattern, a, b):
 
 def _loop(pattern):
     """Lines of the loop over neighbours."""
-    lines = ["j = neighbours[k]", *_centres(pattern)]
+    lines = _centres(pattern)
     if pattern.energies:
         lines.append("pair_u = pair_q = pairx = pairy = pairz = zero")
     site = None
@@ -260,10 +252,18 @@ def _loop(pattern):
 
 
 def _after(pattern):
-    names = [f"f{x}{a}" for a in range(pattern.own) for x in "xyz"]
+    """Lines that add the sums of one body, in double precision from here on."""
+    lines = ["b = body[i]"]
+    for a in range(pattern.own):
+        for k, x in enumerate("xyz"):
+            lines += [f"{x}, f{x} = np.float64({x}{a}), np.float64(f{x}{a})",
+                      f"force[b, {k}] += f{x}"]
+        lines += ["torque[b, 0] += y * fz - z * fy", "torque[b, 1] += z * fx - x * fz",
+                  "torque[b, 2] += x * fy - y * fx"]
     if pattern.energies:
-        names += ["sum_u", "sum_q", "virialx", "virialy", "virialz"]
-    return [f"out[{k}] = {name}" for k, name in enumerate(names)]
+        lines += [f"sums[b, {k}] += {name}" for k, name in
+                  enumerate(("sum_u", "sum_q", "virialx", "virialy", "virialz"))]
+    return lines
 
 
 def pair_source(pattern):
@@ -275,23 +275,19 @@ def pair_source(pattern):
     own, other : flat records; own_centre, other_centre : the same memory as int32.
     my_sites, its_sites : word of a record with which the sites of this call begin.
     entries, counts : (n, capacity) int32 record starts of the neighbours of each body, (n,).
-    edge : (3,) nm per unit of the centre's words.
+    edge : (2, 3) nm per unit of the centre's words, and what its rounding left.
     pairs : (acting pairs, 5), in the order of `Pattern.pairs`: k q q' where there are charges,
         then `laws.lennard_jones_terms` where there is Lennard-Jones; the rest is not read.
     screening : (2, degree + 1) of `laws.CoulombLaw.polynomials`.
     limits : rc², 2/rc², start of the switch, 1 / its width, a place out of reach, force shift.
-    body : (n,) where force and torque (N, 3) and, with energies, sums (N, 5) are added to.
+    body : (n,) where force and torque (N, 3) and, with energies, sums (N, 5) are
+        added to: Lennard-Jones, Coulomb, virial x, y, z.
     """
     lanes = LANES[pattern.real]
-    size = 3 * pattern.own + (len(ROW_SUMS) if pattern.energies else 0)
     text = HEADER.format(pattern=pattern, lanes=lanes, real=pattern.real)
     kinds = {(pair in pattern.lennard_jones, pair in pattern.coulomb) for pair in pattern.pairs}
     text += "".join(_pair_function(pattern, *kind) for kind in sorted(kinds))
-    text += ROW.format(before=_block(["far = limits[4]", *_before(pattern)], 4), fill=lanes - 1,
-                       shift=lanes.bit_length() - 1, loop=_block(_loop(pattern), 8),
-                       after=_block(_after(pattern), 4))
-    text += DRIVER.format(out=size, words=pattern.own_words, sites=pattern.own)
-    if pattern.energies:
-        text += f"            for s in range({len(ROW_SUMS)}):\n"
-        text += f"                sums[b, s] += out[{3 * pattern.own} + s]\n"
-    return text
+    return text + ROWS.format(
+        words=pattern.own_words, fill=lanes - 1, shift=lanes.bit_length() - 1,
+        before=_block(_before(pattern), 4), start=_block(_start(pattern), 8),
+        loop=_block(_loop(pattern), 12), after=_block(_after(pattern), 8))
