@@ -103,6 +103,10 @@ class Grid:
         return (z * self.cells[1] + y) * self.cells[0] + x
 
 
+def _whole_lanes(count):
+    return (int(count) // LANES + 1) * LANES
+
+
 class Rows:
     """The lists of one kind's bodies against another's."""
 
@@ -118,6 +122,8 @@ class Rows:
         start = np.searchsorted(cell[slot], np.arange(np.prod(grid.cells) + 1))
         slot = np.concatenate([slot, np.zeros(LANES, np.int32)])
         sorted_place = np.ascontiguousarray(place[slot].T)
+        expected = len(place) * 4.19 * reach**3 / np.prod(grid.box * grid.repeat)
+        self.capacity = max(self.capacity, _whole_lanes(1.2 * expected))
         while True:
             self.found = np.zeros((own.count, self.capacity), np.int32)
             self.found_counts = np.zeros(own.count, np.int32)
@@ -128,7 +134,7 @@ class Rows:
             most = int(self.found_counts.max())
             if most <= self.capacity:
                 break
-            self.capacity = -(-int(1.1 * most) // LANES) * LANES
+            self.capacity = _whole_lanes(1.1 * most)
         self.entries = np.zeros_like(self.found)
         self.counts = np.zeros_like(self.found_counts)
 
