@@ -13,7 +13,7 @@ from swirlight.motion.ledger import Ledger
 from swirlight.motion.step import Mover
 from swirlight.motion.thermostats import make_thermostat
 from swirlight.run.arrange import lattice_positions, remove_overlaps
-from swirlight.species import load_species
+from swirlight.species.library import load_species
 from swirlight.state import State
 from swirlight.system import Interactions, System
 

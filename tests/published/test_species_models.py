@@ -14,9 +14,9 @@ from chemicals.volume import rho_data_Perry_8E_105_l
 
 from swirlight import units
 from swirlight.config.reader import read_text
-from swirlight.species import load_species
 from swirlight.species.describe import DEBYE, GRAM_PER_CM3, J_PER_MOL_K, rotational_constants
 from swirlight.species.file import read_species
+from swirlight.species.library import load_species
 from swirlight.system import Interactions, System
 
 pytestmark = pytest.mark.published

@@ -11,8 +11,8 @@ from typer.testing import CliRunner
 
 from swirlight.cli.species import species as command
 from swirlight.errors import ConfigError, InputError
-from swirlight.species import library_names, load_species
 from swirlight.species.describe import describe, rotational_constants, species_text
+from swirlight.species.library import library_names, load_species
 from swirlight.species.picture import draw_species
 
 NAMES = ("acetonitrile", "argon", "carbon-dioxide", "carbon-disulfide", "chloroform", "corkscrew",

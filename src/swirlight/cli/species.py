@@ -22,8 +22,8 @@ def species(
     Example: swirlight species acetonitrile --picture acetonitrile.png
     """
     from swirlight.errors import InputError
-    from swirlight.species import library_names, load_species
     from swirlight.species.describe import describe, library_text, species_text
+    from swirlight.species.library import library_names, load_species
 
     if name is None:
         if picture is not None:
