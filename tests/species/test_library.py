@@ -158,7 +158,7 @@ def test_rotational_constants_of_a_linear_body():
 
 
 def test_loading_a_species_imports_neither_compiler_nor_plotting():
-    code = ("import sys, swirlight.species as s; s.load_species('water');"
+    code = ("import sys, swirlight.species.library as s; s.load_species('water');"
             "print([m for m in ('numba', 'matplotlib', 'h5py') if m in sys.modules])")
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60)
     assert done.stdout.strip() == "[]", done.stderr
