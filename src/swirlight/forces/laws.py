@@ -16,6 +16,7 @@ import numpy as np
 from numpy.polynomial import chebyshev
 from scipy.special import erf, erfc, gammainc
 
+from swirlight.errors import InputError
 from swirlight.units import COULOMB
 
 LENNARD_JONES_FORMS = ("switched", "tail-corrected", "force-shifted", "plain")
@@ -87,6 +88,7 @@ class CoulombLaw:
 
         tolerance : largest error, relative to the largest value.
         The degree is 1 or even, so that laws that differ little share a kernel.
+        Raises InputError when no degree up to 60 is enough.
         """
         x = np.cos(np.linspace(0.0, np.pi, 1000))[:-1]  # z > 0
         laws = (self.smooth_force, self.smooth_energy)
@@ -105,7 +107,7 @@ class CoulombLaw:
                     terms = chebyshev.cheb2poly(fit)
                     row[: len(terms)] = terms
                 return powers
-        raise ValueError(
+        raise InputError(
             f"a splitting of {self.alpha:g} /nm is too sharp for a cutoff of {self.cutoff:g} nm"
         )
 
