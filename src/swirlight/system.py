@@ -161,5 +161,6 @@ class System:
             for j, own in enumerate(s.labels) if own == label
         ]
         if not found:
-            raise ValueError(f"no site {name}.{label} in this sample")
+            there = dict.fromkeys(f"{s.name}.{own}" for s in self.species for own in s.labels)
+            raise ValueError(f"no site {name}.{label} in this sample; it has {', '.join(there)}")
         return found

@@ -257,7 +257,7 @@ def test_too_long_a_timestep_is_refused_naming_the_longest():
 def test_too_small_a_box_is_refused_naming_cutoff_and_count():
     with pytest.raises(InputError) as refused:
         plan("sample.species[0].count=64")
-    assert str(refused.value).startswith("forces.cutoff: ")
+    assert "forces.cutoff: the box of" in str(refused.value)
     assert "Largest cutoff for this box: 0.888" in str(refused.value)
     assert "smallest number of bodies for this cutoff at the same density: 92" in str(refused.value)
     assert value(plan("sample.species[0].count=92"), "bodies", "sample") == 92
@@ -290,10 +290,17 @@ def test_refusals_of_species_files_keep_their_place(tmp_path):
         plan(text=BASE.replace("acetonitrile", "bad.yaml"), folder=tmp_path)
 
 
-def test_refusals_name_the_file(tmp_path):
+@pytest.mark.parametrize(("change", "place"), [
+    (("count: 108", "count: 64"), "6:10: forces.cutoff: the box of"),
+    (("acetonitrile", "watter"), r"3:8: sample.species\[0\].use: no species"),
+    (("density: 0.777 g/cm^3", "begin_from: run.yaml"), "4:3: sample.begin_from: "),
+    (("800 nm", "100 THz\n    coupling: resolved"), r"8:5: light\[0\]: a timestep"),
+])
+def test_late_refusals_name_file_line_and_key(tmp_path, change, place):
     path = tmp_path / "run.yaml"
-    path.write_text(BASE.replace("count: 108", "count: 64"))
-    with pytest.raises(InputError, match=r"run\.yaml: forces\.cutoff: "):
+    text = BASE.replace("light:\n", "forces: {cutoff: 1 nm}\nlight:\n")
+    path.write_text(text.replace(*change))
+    with pytest.raises(ConfigError, match=rf"run\.yaml:{place}"):
         check_config(load_config(path))
 
 

@@ -35,7 +35,7 @@ def _finish(document, overrides, path, stem, folder=None):
     if isinstance(document.tree, dict) and document.tree.get("output") is None:
         document.tree["output"] = f"runs/{stem}"
     config = validate(Config, document, folder if path is None else path.parent)
-    config._path, config._text = path, document.text
+    config._path, config._text, config._document = path, document.text, document
     return config
 
 

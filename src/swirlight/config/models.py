@@ -2,14 +2,18 @@
 
 import math
 import pathlib
+import re
 from typing import Annotated
 
 from pydantic import Field, PrivateAttr, field_validator, model_validator
 
 from swirlight.config.light import BiasField, Pulse
+from swirlight.config.reader import Document, parse_path
 from swirlight.config.sections import Exposures, Forces, Record, Sample, Stage
 from swirlight.config.validate import Section, plain
 from swirlight.config.values import Count, Problems, Text, is_path
+
+_LEADING_KEY = re.compile(r"([a-z_]+(?:\[\d+\])?(?:\.[a-z_]+(?:\[\d+\])?)*): ")
 
 
 class Config(Section):
@@ -34,6 +38,7 @@ class Config(Section):
 
     _path: pathlib.Path | None = PrivateAttr(None)
     _text: str = PrivateAttr("")
+    _document: Document | None = PrivateAttr(None)
 
     @property
     def path(self):
@@ -49,6 +54,18 @@ class Config(Section):
     def text(self):
         """The file verbatim, without overrides."""
         return self._text
+
+    def message(self, reason, key=""):
+        """One line, ``FILE:LINE:COL: key: reason``, about something found after reading.
+
+        reason : text; a key it begins with itself (``light[0]: ...``) wins over `key`.
+        """
+        named = _LEADING_KEY.match(reason)
+        if named and (not key or named[1].startswith(re.match(r"\w+", key)[0])):
+            key, reason = named[1], reason[named.end():]
+        if self._document is None:
+            return f"{key}: {reason}" if key else reason
+        return self._document.message((key and parse_path(key)) or (), reason)
 
     def resolved(self):
         """The config as plain YAML values, every default written out, paths absolute.

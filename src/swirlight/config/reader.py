@@ -76,7 +76,7 @@ class Document:
         """
         key, equals, value = assignment.partition("=")
         origin = "--set"
-        path = _parse_path(key.strip())
+        path = parse_path(key.strip())
         if not equals or path is None:
             raise ConfigError(f'--set {printable(assignment)}: needs KEY=VALUE, for example '
                               '--set light[0].duration="120 fs"')
@@ -314,7 +314,7 @@ def _position(text, index):
     return text.count("\n", 0, index) + 1, index - text.rfind("\n", 0, index)
 
 
-def _parse_path(key):
+def parse_path(key):
     """``light[0].duration`` as ("light", 0, "duration"), or None."""
     parts = re.split(r"\.|(?=\[)", key)
     if not all(_KEY.fullmatch(part) for part in parts) or parts[0].startswith("["):

@@ -59,7 +59,8 @@ def examine(config):
     """The Subject of a config; refuses what cannot run. Raises InputError as `check_config`."""
     system = _named(config, "sample", build_system, config)
     if not system.bodies:
-        raise _refusal(config, "sample.species", "no bodies; at least one count must not be 0")
+        raise ConfigError(config.message("no bodies; at least one count must not be 0",
+                                         "sample.species"))
     _named(config, "forces.pairs", _pair_tables, system)
     box = _named(config, "sample", box_edges, config, system)
     _named(config, "forces.cutoff", check_box, box, system.interactions.cutoff, system.bodies)
@@ -94,17 +95,10 @@ def _require_neutral(system):
 
 
 def _named(config, key, function, *arguments):
-    """Call a function; its refusal gets the file and key before it, if it names none itself."""
+    """Call a function; its refusal gets file, line and key before it, if it has none itself."""
     try:
         return function(*arguments)
     except ConfigError:  # of a species file: it names file, line and key
         raise
     except InputError as error:
-        raise _refusal(config, key, error) from None
-
-
-def _refusal(config, key, reason):
-    reason = str(reason)
-    named = reason if not key or reason.startswith(key.split(".")[0]) else f"{key}: {reason}"
-    return InputError(f"{config.path}: {named}" if config.path else named)
-
+        raise ConfigError(config.message(str(error), key)) from None

@@ -1,7 +1,10 @@
 """From a validated config to the sample: the system and its box, without compiled code."""
 
+import contextlib
+
 import numpy as np
 
+from swirlight.errors import ConfigError, InputError
 from swirlight.species.library import load_species
 from swirlight.system import Interactions, System
 
@@ -11,7 +14,7 @@ def build_system(config):
 
     Raises InputError for species that cannot be used.
     """
-    species = tuple(load_species(s.use, folder=config.folder) for s in config.sample.species)
+    species = tuple(_species(config, i) for i in range(len(config.sample.species)))
     forces = config.forces
     interactions = Interactions(
         cutoff=forces.cutoff,
@@ -31,6 +34,22 @@ def build_system(config):
     return System(species, counts, interactions, temperature=config.sample.temperature)
 
 
+def _species(config, index):
+    with _about(f"sample.species[{index}].use"):
+        return load_species(config.sample.species[index].use, folder=config.folder)
+
+
+@contextlib.contextmanager
+def _about(key):
+    """Put the key before a refusal that does not name file and line itself."""
+    try:
+        yield
+    except ConfigError:
+        raise
+    except InputError as error:
+        raise InputError(f"{key}: {error}") from None
+
+
 def box_edges(config, system):
     """(3,) edges: as given, of the start file, or of the cube of the density asked for. [nm]
 
@@ -40,7 +59,8 @@ def box_edges(config, system):
     if sample.begin_from is not None:
         from swirlight.store.start import load_state
 
-        return load_state(config.folder / sample.begin_from, system).box
+        with _about("sample.begin_from"):
+            return load_state(config.folder / sample.begin_from, system).box
     if sample.edges is not None:
         return np.array(sample.edges, float)
     volume = float(system.mass.sum()) / sample.density
