@@ -60,8 +60,30 @@ def kernel(function=None, *, fast=False, parallel=False, **options):
         **options,
     }
     try:
-        return numba.njit(cache=True, **settings)(function)
+        return _with_cached_code(numba.njit(cache=True, **settings)(function))
     except RuntimeError:  # no locator available: nowhere to keep a cache
         warnings.warn("no folder to keep compiled kernels in; they are compiled at each start"
                       " (set NUMBA_CACHE_DIR)", stacklevel=2)
         return numba.njit(**settings)(function)
+
+
+def _with_cached_code(dispatcher):
+    """A kernel with everything that the cache holds for it, loaded at once.
+
+    When a kernel calls another that is not inlined, the caller's machine code carries a copy
+    of the callee, optimised once more, with other roundings. Which of the two runs depends on
+    whether the callee's own code was there first: always in the process that compiles, never
+    in one that finds the caller in the cache. Kernels are defined before their callers, so
+    loading here makes it always, and the bits the same. Without numba's index (it is not
+    public) kernels still run; only this guarantee is lost, and a test tells.
+    """
+    cache = getattr(dispatcher, "_cache", None)
+    try:
+        saved = list(cache._cache_file._load_index())
+        codegen = dispatcher.targetctx.codegen()
+        wanted = [key[0] for key in saved if key == cache._index_key(key[0], codegen)]
+    except (AttributeError, OSError):
+        return dispatcher
+    for signature in wanted:
+        dispatcher.compile(signature)
+    return dispatcher
