@@ -86,6 +86,20 @@ def test_spacing_left_out_is_found_while_equilibrating(tmp_path):
     assert abs(spacing["value"] - 3 * slowest) <= 0.002 + 1e-9  # half a step
 
 
+def test_short_equilibration_and_missing_dark_twins_are_said(tmp_path):
+    """No spacing can be read from 0.3 ps, and no heating from a run without its dark twin."""
+    text = CONFIG.replace(", spacing: 0.2 ps", "").replace("0.6 ps", "0.2 ps")
+    text = text.replace("kinds: [plus, minus, dark]", "kinds: [plus, minus]")
+    run = launch(load_config(write_config(tmp_path, text)), into=tmp_path / "a", progress=False,
+                 threads=1)
+    assert "spacing-too-short" in [code for code, _ in run.summary["warnings"]]
+    assert list(run.summary["heating"]) == ["absorbed_over_heat_capacity"]
+    said = answer(run.path)
+    assert "heating by the end: " in said and "lit less dark" not in said
+    assert "warning: exposures.spacing: left out" in said
+    jsonschema.validate(run.summary, summary_schema())
+
+
 def test_an_equilibrium_run_leaves_one_dark_trajectory(tmp_path):
     text = CONFIG[: CONFIG.index("light:")] + CONFIG[CONFIG.index("stages:"):]
     text = text.replace(", lit: true", "").replace(CONFIG[CONFIG.index("exposures:"):
@@ -111,6 +125,14 @@ def test_bad_input_leaves_nothing_behind(tmp_path):
     assert code == 2 and out == "" and "Traceback" not in error
     assert f"{path}:" in error and "light[0].carrier" in error
     assert not (tmp_path / "a").exists()
+
+
+def test_a_folder_that_cannot_be_made_is_bad_input(tmp_path):
+    (tmp_path / "file").write_text("")
+    code, out, error = finish(command("launch", write_config(tmp_path),
+                                      "--into", tmp_path / "file" / "a"))
+    assert code == 2 and out == "" and error.splitlines()[-1].startswith(
+        f"{tmp_path / 'file' / 'a'}: cannot be made")
 
 
 def test_a_box_too_small_is_refused_before_anything_is_written(tmp_path):

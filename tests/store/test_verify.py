@@ -188,6 +188,25 @@ def test_a_broken_run_folder(under_way, capsys):
     assert caught.value.exit_code == 1 and "has no config.yaml" in capsys.readouterr().out
 
 
+def test_a_run_under_way_may_replace_files_while_we_look(under_way, monkeypatch):
+    """Every checkpoint goes between the listing and the reading, and so does a segment."""
+    from swirlight.store import verify as module
+
+    def vanishes(path, found=module.digest_is_right):
+        path.unlink()
+        return found(path)
+
+    def cleared(path, found=module._verify_file):
+        if path.parent.name == "segments":
+            path.unlink()
+        return found(path)
+
+    monkeypatch.setattr(module, "digest_is_right", vanishes)
+    monkeypatch.setattr(module, "_verify_file", cleared)
+    found = [text for text in verify(under_way) if "segments are missing" not in text]
+    assert [text for text in found if "config.yaml" not in text] == []
+
+
 def test_the_command_says_that_all_is_well(finished, capsys):
     command(finished)
     assert capsys.readouterr().out == f"{finished}: every rule holds\n"

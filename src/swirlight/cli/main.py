@@ -4,7 +4,6 @@ Exit codes: 0 success, 2 bad input (one clear message), 1 the work itself failed
 after Ctrl-C and SIGTERM, once everything is saved.
 """
 
-import os
 import sys
 from typing import Annotated
 
@@ -74,12 +73,10 @@ def run(arguments):
     except SwirlightError as error:
         return _fail(error, 1)
     except OSError as error:
-        return _fail(error, 1)
+        where = f"{error.filename}: " if error.filename else ""
+        return _fail(f"{where}{error.strerror or error}", 1)
     except (KeyboardInterrupt, typer.Abort):
         return _fail("interrupted", 130)
-    except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        return 0
     except Exception as error:
         if hasattr(error, "format_message"):  # a usage error of the argument parser
             return _fail(f"{error.format_message()} (see 'swirlight --help')", 2)

@@ -11,6 +11,7 @@ NAMES = {
     "angular_momentum": "angular momentum",
     "alignment": "alignment ⟨P2⟩",
 }
+LATE = "spacing-too-short"  # the warning that is only known after the run
 
 
 def answer(folder):
@@ -28,12 +29,17 @@ def answer(folder):
     lines += _response(summary["response"]) or _averages(summary["averages"])
     heating = summary["heating"]
     if heating:
-        own = heating["own_temperature"]
-        lines.append(f"heating by the end: {own['value']:+.2f} ± {_number(own['error'])} K (own"
-                     " thermometer, lit less dark),"
-                     f" {heating['absorbed_over_heat_capacity']['value']:.3g} K (absorbed energy"
-                     " over heat capacity)")
+        lines.append("heating by the end: " + _heating(**heating))
+    lines += [f"warning: {text}" for code, text in summary["warnings"] if code == LATE]
     return "\n".join(lines)
+
+
+def _heating(absorbed_over_heat_capacity, own_temperature=None):
+    absorbed = f"{absorbed_over_heat_capacity['value']:.3g} K (absorbed energy over heat capacity)"
+    if own_temperature is None:
+        return absorbed
+    return (f"{own_temperature['value']:+.2f} ± {_number(own_temperature['error'])} K (own"
+            f" thermometer, lit less dark), {absorbed}")
 
 
 def _response(response):

@@ -74,8 +74,12 @@ def create(config, into=None):
         )
     folder = RunFolder(root)
     resolved = config.resolved()
-    for path in (folder.inputs, folder.starts, folder.work):
-        make_folder(path)
+    try:
+        for path in (folder.inputs, folder.starts, folder.work):
+            make_folder(path)
+    except OSError as error:
+        raise InputError(f"{root}: cannot be made: {error.strerror}; --into names another folder"
+                         ) from None
     _copy_inputs(config, resolved, folder)
     text = yaml_text(resolved)
     head = f"# resolved by swirlight {__version__}: every default written out\n"

@@ -74,7 +74,10 @@ def _carry_out(folder, display, threads, resumed=False):
     with FolderLock(folder.root):
         folder.stop.clear()
         with Signals(folder.stop):
-            _Conductor(folder, display, cores, resumed).run()
+            try:
+                _Conductor(folder, display, cores, resumed).run()
+            finally:
+                display.leave()
     return open_run(folder.root)
 
 

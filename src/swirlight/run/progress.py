@@ -5,7 +5,12 @@ the end of a phase, after its files are closed.
 """
 
 import sys
+import threading
 import time
+
+PATIENCE = 3.0  # s without a first step before the reason is told
+COMPILING = ("no step yet: compiling, once on this machine for this kind of sample (up to a minute"
+             " or two)")
 
 
 class Silent:
@@ -23,6 +28,9 @@ class Silent:
     def say(self, text):
         """One line that stays."""
 
+    def leave(self):
+        """The work is over, or has been interrupted."""
+
 
 class PlainLines(Silent):
     """Lines for logs; no control characters."""
@@ -34,24 +42,37 @@ class PlainLines(Silent):
     def phase(self, name, total):
         self._begin(name, total)
         self.say(f"{name}: {total} steps")
+        self._expect_compilation()
 
     def update(self, done, **facts):
         now = time.monotonic()
         self._first = self._first or (now, done)
+        self._waiting.cancel()
         if done < self._said + 0.1 * self._total or now < self._said_at + 30.0:
             return
         self._said, self._said_at = done, now
         self.say(f"{self._name}: " + _line(done, self._total, self._pace(done, now), facts))
 
     def finish(self):
+        self.leave()
         self.say(f"{self._name}: 100 %, {time.monotonic() - self._began:.1f} s")
 
     def say(self, text):
         print(text, file=self.stream, flush=True)
 
+    def leave(self):
+        self._waiting.cancel()
+
+    def _expect_compilation(self):
+        """No silent pause: say what takes so long when the first step does not come."""
+        self._waiting = threading.Timer(PATIENCE, self.say, [COMPILING])
+        self._waiting.daemon = True
+        self._waiting.start()
+
     def _begin(self, name, total):
         self._name, self._total, self._said, self._first = name, total, 0, None
         self._began = self._said_at = time.monotonic()
+        self._waiting = threading.Timer(PATIENCE, self.say)  # started by the phases
 
     def _pace(self, done, now):
         then, before = self._first
@@ -77,17 +98,22 @@ class LiveLine(PlainLines):
         self._begin(name, total)
         self._bar.start()
         self._task = self._bar.add_task(name, total=total, line="")
+        self._expect_compilation()
 
     def update(self, done, **facts):
         now = time.monotonic()
         self._first = self._first or (now, done)
+        self._waiting.cancel()
         line = _line(done, self._total, self._pace(done, now), facts)
         self._bar.update(self._task, completed=done, line=line)
 
     def finish(self):
-        self._bar.stop()
-        self._bar.remove_task(self._task)
         super().finish()
+        self._bar.remove_task(self._task)
+
+    def leave(self):
+        super().leave()
+        self._bar.stop()  # gives the terminal its cursor back
 
     def say(self, text):
         self._bar.console.print(text, highlight=False, markup=False)

@@ -36,12 +36,23 @@ def write_summary(work, timings):
         "ledgers": _ledgers(run, work.exposures, bodies),
         "heating": _heating(run, work) if found else {},
         "timings": {name: {"value": t, "unit": "s"} for name, t in timings.items()},
-        "warnings": read_json(work.folder.work / "warnings.json") or [],
+        "warnings": [*(read_json(work.folder.work / "warnings.json") or []), *_unsettled(work)],
     }
     if found:
         _draw(run, work, found)
     write_json(work.folder.summary, summary)
     return summary
+
+
+def _unsettled(work):
+    """A warning when equilibration was too short for the correlation times it is meant to show."""
+    open_ends = [f"{what} of {name}" for name, times in work.spacing["found"].items()
+                 for what, time in times.items() if not time["settled"]]
+    if not open_ends:
+        return []
+    return [["spacing-too-short", "exposures.spacing: left out, and the last unlit stage is too"
+             f" short to see the memory of {', '.join(open_ends)} fade: the starts may depend on"
+             " one another; lengthen that stage, or give the spacing"]]
 
 
 def _exposure(run, exposure, bodies):
@@ -115,20 +126,21 @@ def _heating(run, work):
     lit = [kind for kind in ("plus", "minus") if kind in rows]
     if not lit or not len(rows[lit[0]]):
         return {}
-    rise = np.mean([rows[k] for k in lit], axis=0) - rows.get("dark", work.system.temperature)
-    value, error, _ = mean_and_error(rise)
     absorbed = collect(run, work.exposures, lambda t: float(t["absorbed_energy"][-1]))
     energy = np.mean([absorbed[k] for k in lit]) * units.KJ_PER_MOL
     capacity, known = _heat_capacity(work.system)
-    return {
-        "own_temperature": {"value": float(value), "error": float(error), "unit": "K",
-                            "of": "lit less dark, at the end of the run"},
+    found = {
         "absorbed_over_heat_capacity": {
             "value": float(energy / capacity), "unit": "K",
             "heat_capacity": "of the species' files" if known else
             "kinetic part alone where no heat capacity is given: an upper bound",
         },
     }
+    if "dark" in rows:  # without the dark twin there is nothing to take it from
+        value, error, _ = mean_and_error(np.mean([rows[k] for k in lit], axis=0) - rows["dark"])
+        found["own_temperature"] = {"value": float(value), "error": float(error), "unit": "K",
+                                    "of": "lit less dark, at the end of the run"}
+    return found
 
 
 def _heat_capacity(system):

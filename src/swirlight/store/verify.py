@@ -39,9 +39,11 @@ def _verify_folder(folder):
     checkpoints = sorted(work.glob("*/checkpoints/*.h5"))
     if not files + segments + checkpoints:
         raise InputError(f"{folder}: no trajectory, start file or segment in it")
-    problems = [text for file in files + segments for text in _verify_file(file)]
+    problems = [text for file in files for text in _verify_file(file)]
+    # A run under way replaces its checkpoints and clears its segments while we look.
+    problems += [text for file in segments for text in _verify_file(file) if file.exists()]
     problems += [f"{path}: damaged: its checksum does not fit its content"
-                 for path in checkpoints if not digest_is_right(path)]
+                 for path in checkpoints if not _is_whole(path)]
     if not (folder / "config.yaml").is_file():
         problems.append(f"{folder}: has no config.yaml")
     try:
@@ -50,9 +52,17 @@ def _verify_folder(folder):
         problems.append(str(error))
     for segment in sorted({path.parent for path in segments}):
         numbers = [int(p.stem) for p in sorted(segment.glob("*.h5"))]
-        if numbers != list(range(len(numbers))):
+        complete = (folder / f"{segment.parent.name}.h5").exists()
+        if numbers != list(range(len(numbers))) and not complete:
             problems.append(f"{segment}: segments are missing; there are {numbers}")
     return problems
+
+
+def _is_whole(checkpoint):
+    try:
+        return digest_is_right(checkpoint)
+    except FileNotFoundError:  # a newer one has taken its place
+        return True
 
 
 def _verify_file(path):
