@@ -48,9 +48,3 @@ class State:
         bits = getattr(np.random, recorded["bit_generator"])()
         bits.state = recorded
         self.random = np.random.Generator(bits)
-
-    def save(self, path):
-        """Write a start file that `begin_from` reads. Raises OSError when it cannot be written."""
-        from swirlight.store.start import save_state  # the file format lives higher up
-
-        save_state(path, self)

@@ -14,7 +14,7 @@ from swirlight.motion.step import Mover
 from swirlight.run.arrange import lattice_positions, remove_overlaps
 from swirlight.run.sample import box_edges, build_system
 from swirlight.state import State
-from swirlight.store.start import load_state
+from swirlight.store.start import load_state, save_state
 
 
 def lattice_start(config, system, box):
@@ -69,6 +69,14 @@ class Evaluation:
     absorbed_power: float
 
 
+class SceneState(State):
+    """The state of a scene, which can save itself."""
+
+    def save(self, path):
+        """Write a start file, which `sample.begin_from` reads. Raises OSError if it cannot."""
+        save_state(path, self, self.system)
+
+
 class Scene:
     """A config brought to life without running it.
 
@@ -78,7 +86,8 @@ class Scene:
     def __init__(self, config):
         self.config = config
         self.system = build_system(config)
-        self.state = first_state(config, self.system)
+        self.state = SceneState(**vars(first_state(config, self.system)))
+        self.state.system = self.system
         stage = config.stages[-1]
         pulses = pulses_from_config(config.light, self.system, stage)
         self.light = Light(self.system, pulses, bias_from_config(config.bias_field))

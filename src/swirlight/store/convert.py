@@ -19,8 +19,8 @@ import numpy as np
 
 from swirlight.errors import InputError
 from swirlight.store.durable import make_folder, replacing
+from swirlight.store.layout import LABELS
 from swirlight.store.run import Run, open_run
-from swirlight.store.series import LABELS
 from swirlight.store.trajectory import Trajectory, body_axes
 
 BLOCK_BYTES = 16e6

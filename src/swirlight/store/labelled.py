@@ -3,7 +3,7 @@
 import numpy as np
 
 from swirlight.errors import InputError
-from swirlight.store.series import LABELS
+from swirlight.store.layout import LABELS
 
 try:
     import xarray

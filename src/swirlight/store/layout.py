@@ -30,6 +30,13 @@ _USUAL_AXES = {
     (3, 3): ("axis", "component"),
     (3, 2): ("component", "part"),
 }
+# What the places along an axis of that name are called.
+LABELS = {
+    "component": ["x", "y", "z"],
+    "quaternion": ["w", "x", "y", "z"],
+    "axis": ["x", "y", "z"],
+    "part": ["real", "imaginary"],
+}
 _FACTOR = re.compile(r"[A-Za-z%]+([+-][0-9]+)?")
 _NUMBER = re.compile(r"[0-9]+(\.[0-9]+)?(e[+-]?[0-9]+)?")
 

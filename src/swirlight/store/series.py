@@ -3,13 +3,6 @@
 import numpy as np
 from numpy.lib.mixins import NDArrayOperatorsMixin
 
-LABELS = {
-    "component": ["x", "y", "z"],
-    "quaternion": ["w", "x", "y", "z"],
-    "axis": ["x", "y", "z"],
-    "part": ["real", "imaginary"],
-}
-
 
 class Series(NDArrayOperatorsMixin):
     """Frames of one quantity, (frames, ...); indexing reads from the disk what it needs.
