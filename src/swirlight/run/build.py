@@ -108,15 +108,15 @@ class Scene:
         terms = {name: out * value for name, value in load.field.terms.items()}
         terms["bias"] = out * load.bias_energy
         return Evaluation(
-            energy=sum(terms.values()),
+            energy=float(sum(terms.values())),
             terms=terms,
-            virial=out * load.field.virial,
+            virial=float(out * load.field.virial),
             force=out * load.force,
             torque=out * load.torque,
             light_torque=out * load.light_torque,
             light_force=out * load.light_force,
-            light_energy=out * load.light_energy,
-            absorbed_power=out * load.absorbed_power,
+            light_energy=float(out * load.light_energy),
+            absorbed_power=float(out * load.absorbed_power),
         )
 
 
