@@ -1,6 +1,5 @@
 """What a trajectory file says about where it comes from, beside its frames."""
 
-import numpy as np
 from scipy import constants
 
 from swirlight import __version__, units
@@ -44,7 +43,7 @@ def _stages(system, legs):
     found = {}
     for index, leg in enumerate(legs):
         thermostat = make_thermostat(system, **leg.thermostat)
-        kept = conserves_momentum(system, thermostat, bool(leg.pulses) or leg.bias is not None)
+        kept = conserves_momentum(system, thermostat, leg.pulses or leg.bias or None)
         freedom = degrees_of_freedom(system, kept)
         found[f"{index}-{leg.name}"] = {
             "steps": leg.steps,
@@ -80,7 +79,7 @@ def _pulse(pulse):
         "centre": Labelled(pulse.centre, "ps"),
         "duration": Labelled(pulse.envelope.duration, "ps"),
         "phase": Labelled(pulse.phase, "rad"),
-        "direction": np.array(pulse.direction),
+        "direction": pulse.beam,
         "coupling": pulse.coupling,
         "exposed": bool(exposed((pulse,))),
     }

@@ -149,7 +149,7 @@ class _Conductor:
 
     def _take(self, record):
         if isinstance(record, StopRequested):
-            self._stopped = record
+            self._stopped = max(self._stopped or record, record, key=lambda stop: stop.step)
         elif isinstance(record, Exception):
             self._failed.append(("?", f"{type(record).__name__}: {record}"))
         elif record["failed"]:

@@ -82,8 +82,13 @@ class Species:
 
     @property
     def dipole(self):
-        """(3,) dipole about the centre of mass, body frame. [e nm]"""
-        return self.charge @ self.sites
+        """(3,) dipole about the centre of mass, body frame. [e nm]
+
+        What only rounding has left of components that cancel is 0.
+        """
+        dipole = self.charge @ self.sites
+        return np.where(np.abs(dipole) > 1e-12 * np.abs(self.charge) @ np.abs(self.sites),
+                        dipole, 0.0)
 
     @property
     def radius(self):
