@@ -12,7 +12,7 @@ import swirlight
 from swirlight.config import load_config
 from swirlight.errors import ConfigError, InputError
 from swirlight.run.plan import check_config
-from swirlight.run.plan_page import CAUTION, OUTSIDE, Notice, Plan, Row, Section
+from swirlight.run.plan.page import CAUTION, OUTSIDE, Notice, Plan, Row, Section
 from swirlight.store.start import save_state
 from tests.config.good import GOOD
 from tests.run.plans import BASE, DARK, config, plan, rod, rod_plan, value
@@ -34,7 +34,7 @@ def test_every_key_is_said_back_in_its_unit():
 
 def test_echo_reads_back_as_the_same_config():
     """Every leaf of the resolved config appears once, all digits kept."""
-    from swirlight.run.plan_echo import leaves
+    from swirlight.run.plan.echo import leaves
 
     checked = config(text=GOOD)
     shown = {row.name: str(row) for part in check_config(checked).sections

@@ -7,7 +7,7 @@ import pytest
 
 from swirlight.observe.totals import TOTALS
 from swirlight.observe.vectors import VECTORS, chosen
-from swirlight.run import plan_cost
+from swirlight.run.plan import cost as plan_cost
 from swirlight.run.plan import examine
 from swirlight.run.rates import expected_rate, record_rate, workload
 from tests.run.plans import DARK, config, plan, value

@@ -3,15 +3,15 @@
 import numpy as np
 import pytest
 
-from swirlight.run.plan_figures import (
+from swirlight.run.plan.figures import (
     absorbed_spin,
     kinetic_heat_capacity,
     photon_over_kt,
     quantum_rotation,
     rotation_periods,
 )
-from swirlight.run.plan_light import deciding
-from swirlight.run.plan_sample import smallest_count
+from swirlight.run.plan.light import deciding
+from swirlight.run.plan.sample import smallest_count
 
 
 def test_thermal_periods_of_nitrogen():

@@ -12,7 +12,7 @@ import pytest
 
 import swirlight.run
 from swirlight.errors import InputError
-from swirlight.run import plan_cost
+from swirlight.run.plan import cost as plan_cost
 from tests.run.plans import BASE, DARK, plan, rod, rod_plan, value
 
 CALM = ()  # the base config
@@ -220,7 +220,7 @@ def test_a_dark_config_is_calm():
 
 def test_no_warning_is_left_out():
     folder = pathlib.Path(swirlight.run.__file__).parent
-    source = "".join(p.read_text() for p in folder.glob("plan_*.py"))
+    source = "".join(p.read_text() for p in folder.glob("plan/*.py"))
     codes = set(re.findall(r'Notice\(\s*"([a-z-]+)"', source))
     codes |= set(re.findall(r'\("(nyquist-[a-z]+)"', source))
     codes |= set(re.findall(r'^    "([a-z-]+)": "[a-z ]+",$', source, re.M))

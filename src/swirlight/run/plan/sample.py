@@ -4,8 +4,8 @@ import math
 
 import numpy as np
 
-from swirlight.run.plan_figures import kinetic_heat_capacity, quantum_rotation, rotation_periods
-from swirlight.run.plan_page import Notice, Row, Section, quantity
+from swirlight.run.plan.figures import kinetic_heat_capacity, quantum_rotation, rotation_periods
+from swirlight.run.plan.page import Notice, Row, Section, quantity
 from swirlight.species.body import ATOM
 from swirlight.units import HBAR, LIGHT_SPEED
 

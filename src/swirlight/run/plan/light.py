@@ -7,9 +7,9 @@ from swirlight.light.exposure import exposed
 from swirlight.light.limits import VISIBLE, sample_statements, strength_for
 from swirlight.light.regime import ENOUGH_STEPS, check_steps
 from swirlight.light.response import choose_response
-from swirlight.run.plan_figures import absorbed_spin, photon_over_kt
-from swirlight.run.plan_page import Notice, Row, Section, quantity
-from swirlight.run.plan_sample import heat_capacity
+from swirlight.run.plan.figures import absorbed_spin, photon_over_kt
+from swirlight.run.plan.page import Notice, Row, Section, quantity
+from swirlight.run.plan.sample import heat_capacity
 from swirlight.units import HBAR
 
 LINEAR_RESPONSE = 0.3  # wells in kT and impulses in √(IkT): departures are expected above

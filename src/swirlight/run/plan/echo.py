@@ -1,6 +1,6 @@
 """Part of `check` that says back what was understood: every key, in one fixed unit a quantity."""
 
-from swirlight.run.plan_page import Row, Section
+from swirlight.run.plan.page import Row, Section
 from swirlight.units import KINDS
 
 SHOWN = {kind.shown for kind in KINDS.values()}

@@ -5,7 +5,7 @@ import os
 import pathlib
 import shutil
 
-from swirlight.run.plan_page import Notice, Row, Section
+from swirlight.run.plan.page import Notice, Row, Section
 from swirlight.run.rates import expected_rate, pair_count, workload
 
 # Numbers that a frame holds for each body (position brings `image`, int32), and for the box.

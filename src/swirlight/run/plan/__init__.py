@@ -10,29 +10,29 @@ from swirlight.errors import ConfigError, InputError
 from swirlight.forces.box import check_box
 from swirlight.light.build import bias_from_config, pulses_from_config
 from swirlight.light.response import choose_response
-from swirlight.run import plan_cost, plan_light, plan_sample, plan_stages
 from swirlight.run.exposures import list_exposures
-from swirlight.run.plan_echo import echo
-from swirlight.run.plan_page import Notice, Plan, Row, Section
-from swirlight.run.plan_subject import Subject
+from swirlight.run.plan import cost, light, sample, stages
+from swirlight.run.plan.echo import echo
+from swirlight.run.plan.page import Notice, Plan, Row, Section
+from swirlight.run.plan.subject import Subject
 from swirlight.run.sample import box_edges, build_system
 
 __all__ = ["Notice", "Plan", "Row", "Section", "check", "check_config"]
 
 PARTS = (
     echo,
-    plan_sample.sample,
-    plan_sample.bodies,
-    plan_light.pulses,
-    plan_light.strengths,
-    plan_light.heating,
-    plan_light.bias,
-    plan_light.odd_part,
-    plan_stages.boundary,
-    plan_stages.stages,
-    plan_stages.record,
-    plan_stages.trajectories,
-    plan_cost.cost,
+    sample.sample,
+    sample.bodies,
+    light.pulses,
+    light.strengths,
+    light.heating,
+    light.bias,
+    light.odd_part,
+    stages.boundary,
+    stages.stages,
+    stages.record,
+    stages.trajectories,
+    cost.cost,
 )
 
 

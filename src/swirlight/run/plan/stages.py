@@ -6,7 +6,7 @@ import numpy as np
 
 from swirlight.light.describe import end_of_light
 from swirlight.light.regime import beats
-from swirlight.run.plan_page import Notice, Row, Section, quantity
+from swirlight.run.plan.page import Notice, Row, Section, quantity
 
 ROTATION_STEPS = 40  # timesteps in the fastest thermal rotation; librations are a few times faster
 THERMAL_BAND = 4.0  # thermal rates √(kT/I): hardly a body turns faster
