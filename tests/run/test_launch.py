@@ -100,6 +100,27 @@ def test_short_equilibration_and_missing_dark_twins_are_said(tmp_path):
     jsonschema.validate(run.summary, summary_schema())
 
 
+def test_one_trajectory_in_this_process_shows_its_progress(tmp_path, monkeypatch):
+    """Facts arrive while it runs; its pace is that of its own steps, not of the start's count."""
+    from swirlight.run import launch as module
+    from swirlight.run import trajectory
+
+    seen, paces = [], []
+
+    class Watching(module.displays.Silent):
+        def update(self, done, **facts):
+            seen.append(done)
+
+    monkeypatch.setattr(trajectory, "REPORT_EVERY", 0.0)
+    monkeypatch.setattr(module.displays, "choose", lambda wanted: Watching())
+    monkeypatch.setattr(module, "record_rate", lambda workload, pace: paces.append(pace))
+    text = CONFIG.replace("kinds: [plus, minus, dark], starts: 2, spacing: 0.2 ps",
+                          "kinds: [dark], starts: 1").replace("0.6 ps", "4 ps")
+    launch(load_config(write_config(tmp_path, text)), into=tmp_path / "a")
+    assert {50, 100, 150} <= set(seen)  # of the 200 steps of the only exposure
+    assert len(paces) == 2 and max(paces) < 4 * min(paces)  # the start is at step 1000
+
+
 def test_an_equilibrium_run_leaves_one_dark_trajectory(tmp_path):
     text = CONFIG[: CONFIG.index("light:")] + CONFIG[CONFIG.index("stages:"):]
     text = text.replace(", lit: true", "").replace(CONFIG[CONFIG.index("exposures:"):

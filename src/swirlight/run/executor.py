@@ -22,10 +22,12 @@ ONE_THREAD = {
 }
 
 
-def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=lambda: None):
+def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=lambda: None,
+                 here=None):
     """Call ``function(*task)`` for every task; hand each result to `each` as it arrives.
 
     cores : how many run at once; with one core (or one task) they run here, in order.
+    here : what to call in place of `function` when they do, as it need not be picklable.
     stop : StopFile; tasks look at it themselves, the driver only when no worker is left.
     tick : called about once a second in the driver while workers are busy.
     A task that raises does not stop the others: its exception is handed to `each`, and so is
@@ -35,7 +37,7 @@ def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=la
     if cores == 1 or len(tasks) == 1:
         for task in tasks:
             try:
-                record = function(*task)
+                record = (here or function)(*task)
             except Exception as error:
                 record = error
             each(record)

@@ -10,6 +10,7 @@ in a folder that holds some of them.
 
 import os
 import time
+from functools import partial
 
 import numpy as np
 
@@ -22,7 +23,7 @@ from swirlight.run.plan import check_config
 from swirlight.run.rates import record_rate, workload
 from swirlight.run.stop import Signals
 from swirlight.run.summary import write_summary
-from swirlight.run.work import Work, expose
+from swirlight.run.work import Work, expose, note_failure
 from swirlight.store.durable import remove_folder, write_json
 from swirlight.store.lock import FolderLock
 from swirlight.store.run import open_run, read_json
@@ -116,8 +117,13 @@ class _Conductor:
     def _prepare(self):
         for name, trajectory, begin in self.work.preparations():
             self.display.phase(name, trajectory.steps)
-            trajectory.travel(begin, self.folder.stop, self._show)
-            self._remember_pace(trajectory.pace, self.cores)
+            try:
+                trajectory.travel(begin, self.folder.stop, self._show)
+            except RunError as error:
+                note_failure(self.folder, trajectory.workdir.name, error)
+                raise
+            if trajectory.pace:
+                self._remember_pace(trajectory.pace, self.cores)
             self.display.finish()
 
     def _show(self, facts):
@@ -134,6 +140,7 @@ class _Conductor:
         side_by_side(
             expose, [(str(self.folder.root), e.name) for e in todo], self.cores,
             self.folder.stop, self._take, self._tick,
+            here=partial(expose, report=lambda facts: self._tick()),
         )
         if self._stopped is not None:
             raise self._stopped

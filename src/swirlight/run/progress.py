@@ -9,8 +9,8 @@ import threading
 import time
 
 PATIENCE = 3.0  # s without a first step before the reason is told
-COMPILING = ("no step yet: compiling, once on this machine for this kind of sample (up to a minute"
-             " or two)")
+STARTING = ("no step yet: starting up, and compiling if this kind of sample is new on this machine"
+            " (once, up to a minute or two)")
 
 
 class Silent:
@@ -37,6 +37,7 @@ class PlainLines(Silent):
 
     def __init__(self, stream=None):
         self.stream = stream or sys.stderr
+        self._started, self._waiting = False, threading.Timer(PATIENCE, self.say)
         self._begin("", 0)
 
     def phase(self, name, total):
@@ -65,14 +66,15 @@ class PlainLines(Silent):
 
     def _expect_compilation(self):
         """No silent pause: say what takes so long when the first step does not come."""
-        self._waiting = threading.Timer(PATIENCE, self.say, [COMPILING])
-        self._waiting.daemon = True
-        self._waiting.start()
+        if not self._started:  # later phases find everything compiled
+            self._started = True
+            self._waiting = threading.Timer(PATIENCE, self.say, [STARTING])
+            self._waiting.daemon = True
+            self._waiting.start()
 
     def _begin(self, name, total):
         self._name, self._total, self._said, self._first = name, total, 0, None
         self._began = self._said_at = time.monotonic()
-        self._waiting = threading.Timer(PATIENCE, self.say)  # started by the phases
 
     def _pace(self, done, now):
         then, before = self._first

@@ -117,12 +117,12 @@ class Trajectory:
             writer = TrajectoryWriter.create(self.workdir, header, size)
             at, self._tick = (0, 0), 0
         self._writer, self._stop, self._report = writer, stop, report
-        self._reported, began, first = 0.0, time.monotonic(), state.step
+        self._reported, self._timed_steps, self._seconds = 0.0, 0, 0.0
         try:
             for index in range(at[0], len(self.legs)):
                 first = index == at[0]
                 self._run_leg(state, index, at[1] if first else 0, saved if first else None)
-            self.pace = (state.step - first) / (time.monotonic() - began)
+            self.pace = self._timed_steps / self._seconds if self._timed_steps else None
             writer.finish(self.final)
         finally:
             writer.close()
@@ -140,7 +140,6 @@ class Trajectory:
             mover.ledger = Ledger.from_array(saved.payload["ledger"])
         elif self._tick == 0:
             writer.append(0, recorder.frames(0, state, mover))
-        started, before = time.monotonic(), done
         for step in range(done + 1, leg.steps + 1):
             self._tick += self.clock.ratio[index]
             mover.advance(state, energies=energies(self._tick) or step == leg.steps)
@@ -154,9 +153,14 @@ class Trajectory:
                 self._checkpoint(state, index, step, mover)
                 raise StopRequested(state.step, number)
             now = time.monotonic()
+            if step == done + 1:  # it may have compiled, which is no measure of pace
+                started, before = now, step
             if now - self._reported > REPORT_EVERY:
                 self._reported = now
-                self._tell(recorder, index, step, (step - before) / (now - started))
+                self._tell(recorder, index, step, (step - before) / max(now - started, 1e-9))
+        if leg.steps > done:
+            self._timed_steps += leg.steps - before
+            self._seconds += time.monotonic() - started
         self.leg_done(index, state)
 
     def _checkpoint(self, state, index, step, mover):

@@ -174,10 +174,15 @@ class Work:
 _known = {}
 
 
-def expose(root, name):
+def note_failure(folder, name, reason):
+    """Leave in the run folder why the trajectory `name` could not be finished."""
+    write_json(pathlib.Path(folder.failure(name)), {"name": name, "reason": str(reason)})
+
+
+def expose(root, name, report=lambda facts: None):
     """Carry one exposure to its end; the task of a worker process.
 
-    root : the run folder; name : of the exposure.
+    root : the run folder; name : of the exposure; report : as of `Trajectory.travel`.
     Returns {"name", "failed": reason or None, "pace": steps per second or None if there was
     nothing to do}; a stop request is raised as StopRequested.
     """
@@ -190,8 +195,8 @@ def expose(root, name):
     work = _known.get(root) or _known.setdefault(root, Work(folder))
     trajectory, begin = work.exposure(name)
     try:
-        trajectory.travel(begin, folder.stop)
+        trajectory.travel(begin, folder.stop, report)
     except RunError as error:
-        write_json(pathlib.Path(folder.failure(name)), {"name": name, "reason": str(error)})
+        note_failure(folder, name, error)
         return {"name": name, "failed": str(error), "pace": None}
     return {"name": name, "failed": None, "pace": trajectory.pace}
