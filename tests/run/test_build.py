@@ -5,6 +5,7 @@ import pytest
 
 import swirlight as sw
 from swirlight.errors import InputError
+from swirlight.motion.rotation import to_body
 from swirlight.store.start import load_state
 from tests.run.small import write_config
 
@@ -31,6 +32,22 @@ def test_energy_is_the_sum_of_its_terms_and_the_light_stays_outside(scene):
     assert lit.energy == dark.energy and lit.light_energy < 1e6 * dark.light_energy < 0
     np.testing.assert_allclose(lit.torque - lit.light_torque, dark.torque - dark.light_torque,
                                atol=1e-12)
+
+
+def test_linear_bodies_may_be_turned_by_hand(scene, tmp_path):
+    """Forces ask for no momenta; a start file keeps those that the new axes allow."""
+    before = scene.state.orientation
+    turned = np.roll(before, 1, axis=0)
+    scene.state.orientation = turned
+    try:
+        assert np.isfinite(scene.evaluate().energy)
+        scene.state.save(tmp_path / "turned.h5")
+    finally:
+        scene.state.orientation = before
+    loaded = load_state(tmp_path / "turned.h5", scene.system)
+    spin = to_body(turned, loaded.angular_momentum)
+    expected = to_body(turned, scene.state.angular_momentum) * [1, 1, 0]  # z is the axis
+    np.testing.assert_allclose(spin, expected, atol=1e-12)
 
 
 def test_evaluating_moves_nothing(scene):

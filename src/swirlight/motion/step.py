@@ -145,6 +145,17 @@ class Mover:
         return self._offset + self._count * self.timestep
 
 
+def stray_spins(system, orientation, angular_momentum):
+    """Indices of bodies that have angular momentum about an axis without moment of inertia.
+
+    orientation : (N, 4); angular_momentum : (N, 3) laboratory frame. Rounding does not count.
+    """
+    spin = np.abs(to_body(orientation, angular_momentum))
+    thermal = np.sqrt(BOLTZMANN * system.temperature * system.inertia.max(axis=1))
+    stray = np.where(system.inertia > 0, 0.0, spin).max(axis=1)
+    return np.flatnonzero(stray > 1e-6 * np.maximum(spin.max(axis=1), thermal))
+
+
 def _check(system, state):
     """Shapes, unit quaternions, no angular momentum where there is no moment of inertia."""
     for name, width in (("position", 3), ("orientation", 4), ("velocity", 3),
@@ -158,10 +169,7 @@ def _check(system, state):
     if not np.all(np.abs(length - 1) < 1e-6):
         worst = int(np.argmax(np.abs(length - 1)))
         raise ValueError(f"orientation of body {worst} has length {length[worst]:.9g}, not 1")
-    spin = np.abs(to_body(state.orientation, state.angular_momentum))
-    thermal = np.sqrt(BOLTZMANN * system.temperature * system.inertia.max(axis=1))
-    stray = np.where(system.inertia > 0, 0.0, spin).max(axis=1)
-    wrong = np.flatnonzero(stray > 1e-6 * np.maximum(spin.max(axis=1), thermal))
+    wrong = stray_spins(system, state.orientation, state.angular_momentum)
     if len(wrong):
         raise ValueError(f"body {wrong[0]} ({_name(system, wrong[0])}) has angular momentum about"
                          " an axis without moment of inertia")

@@ -10,7 +10,8 @@ from swirlight.forces.field import ForceField
 from swirlight.light.build import bias_from_config, pulses_from_config
 from swirlight.light.light import Light
 from swirlight.motion.draw import draw_motion, draw_orientations
-from swirlight.motion.step import Mover
+from swirlight.motion.rotation import to_body, to_laboratory
+from swirlight.motion.step import Mover, stray_spins
 from swirlight.run.arrange import lattice_positions, remove_overlaps
 from swirlight.run.sample import box_edges, build_system
 from swirlight.state import State
@@ -73,8 +74,28 @@ class SceneState(State):
     """The state of a scene, which can save itself."""
 
     def save(self, path):
-        """Write a start file, which `sample.begin_from` reads. Raises OSError if it cannot."""
-        save_state(path, self, self.system)
+        """Write a start file, which `sample.begin_from` reads. Raises OSError if it cannot.
+
+        A linear body that was turned in hand loses the angular momentum about its new axis.
+        """
+        save_state(path, _in_place(self.system, self), self.system)
+
+
+def _in_place(system, state):
+    """The state, without angular momenta that orientations assigned by hand rule out."""
+    orientation = np.asarray(state.orientation, np.float64)
+    momentum = np.asarray(state.angular_momentum, np.float64)
+    shapes = (system.bodies, 4), (system.bodies, 3)
+    if (orientation.shape, momentum.shape) != shapes:
+        return state  # what is wrong with it is said when it is used
+    rows = stray_spins(system, orientation, momentum)
+    if not len(rows):
+        return state
+    fields = {**{name: getattr(state, name) for name in State.ARRAYS}, "step": state.step,
+              "random": state.random, "angular_momentum": momentum.copy()}
+    own = np.where(system.inertia[rows] > 0, to_body(orientation[rows], momentum[rows]), 0.0)
+    fields["angular_momentum"][rows] = to_laboratory(orientation[rows], own)
+    return State(**fields)
 
 
 class Scene:
@@ -99,7 +120,7 @@ class Scene:
         Returns an Evaluation. Raises InputError for a time that cannot be read, or a box
         that is too small for the cutoff.
         """
-        state = self.state
+        state = _in_place(self.system, self.state)
         check_box(state.box, self.system.interactions.cutoff, self.system.bodies)
         mover = Mover(self.system, ForceField(self.system, state.box), self.light, 1e-3, None,
                       remove_momentum=False)
