@@ -1,6 +1,8 @@
 """Tasks side by side: order, failures, and workers that die."""
 
 import os
+import subprocess
+import sys
 
 import pytest
 
@@ -38,28 +40,51 @@ def stop(tmp_path):
 
 def gather(function, tasks, cores, stop):
     found = []
-    side_by_side(function, [(t,) for t in tasks], cores, stop, found.append)
+    side_by_side(function, [(t,) for t in tasks], cores, stop,
+                 lambda task, record: found.append((task[0], record)))
     return found
 
 
 @pytest.mark.parametrize("cores", [1, 2])
 def test_every_task_once_and_a_failure_stops_nobody(cores, stop):
-    assert sorted(gather(square, range(5), cores, stop)) == [0, 1, 4, 9, 16]
-    found = gather(fail_at_two, range(4), cores, stop)
-    assert sorted(x for x in found if isinstance(x, int)) == [0, 1, 3]
-    assert [str(x) for x in found if isinstance(x, Exception)] == ["two"]
+    assert sorted(gather(square, range(5), cores, stop)) == [(x, x * x) for x in range(5)]
+    found = dict(gather(fail_at_two, range(4), cores, stop))
+    assert str(found.pop(2)) == "two"
+    assert found == {0: 0, 1: 1, 3: 3}
 
 
 def test_a_worker_that_dies_costs_its_task_alone(stop):
-    found = gather(die_at_two, range(4), 2, stop)
-    assert sorted(x for x in found if isinstance(x, int)) == [0, 1, 3]
-    assert sum(isinstance(x, Exception) for x in found) == 1
+    found = dict(gather(die_at_two, range(4), 2, stop))
+    assert isinstance(found.pop(2), Exception)
+    assert found == {0: 0, 1: 1, 3: 3}
 
 
 def test_workers_have_one_thread_and_the_driver_keeps_its_own(stop):
     before = os.environ.get("OMP_NUM_THREADS")
-    assert gather(threads, range(2), 2, stop) == [(1, "1")] * 2
+    assert sorted(gather(threads, range(2), 2, stop)) == [(0, (1, "1")), (1, (1, "1"))]
     assert os.environ.get("OMP_NUM_THREADS") == before
+
+
+UNGUARDED = """
+from swirlight.run.executor import side_by_side
+from swirlight.run.stop import StopFile
+
+print("the script runs", flush=True)
+side_by_side(divmod, [(7, 4), (9, 4)], 2, StopFile("stop"), print)
+print(__file__)
+"""
+
+
+def test_a_script_without_a_guard_runs_once(tmp_path):
+    """Workers that imported it would start clusters of their own."""
+    script = tmp_path / "script.py"
+    script.write_text(UNGUARDED)
+    done = subprocess.run([sys.executable, script], cwd=tmp_path, capture_output=True, text=True,
+                          timeout=100)
+    assert done.returncode == 0, done.stderr
+    first, *results, last = done.stdout.splitlines()
+    assert first == "the script runs" and last == str(script)
+    assert sorted(results) == ["(7, 4) (1, 3)", "(9, 4) (2, 1)"]
 
 
 def test_without_any_worker_the_driver_gives_up(stop, monkeypatch):
@@ -69,8 +94,8 @@ def test_without_any_worker_the_driver_gives_up(stop, monkeypatch):
         def submit(self, *_, **__):
             return object()
 
-        def scheduler_info(self, **_):
-            return {"workers": {}}
+        def nthreads(self):
+            return {}
 
     def nothing_yet(*_, **__):
         raise TimeoutError

@@ -8,6 +8,7 @@ the cluster: the disk is the truth.
 import contextlib
 import os
 import signal
+import sys
 import time
 
 from swirlight.errors import RunError, StopRequested
@@ -22,17 +23,19 @@ ONE_THREAD = {
 }
 
 
-def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=lambda: None,
-                 here=None):
-    """Call ``function(*task)`` for every task; hand each result to `each` as it arrives.
+def side_by_side(function, tasks, cores, stop, each=lambda task, record: None,
+                 tick=lambda: None, here=None):
+    """Call ``function(*task)`` for every task; call ``each(task, result)`` as results arrive.
+
+    function : importable by name; workers do not see the script that called this.
 
     cores : how many run at once; with one core (or one task) they run here, in order.
     here : what to call in place of `function` when they do, as it need not be picklable.
     stop : StopFile; tasks look at it themselves, the driver only when no worker is left.
     tick : called about once a second in the driver while workers are busy.
-    A task that raises does not stop the others: its exception is handed to `each`, and so is
-    that of a task whose worker dies again and again. Raises RunError when no worker process
-    can be kept alive.
+    A task that raises does not stop the others: its exception is handed to `each` as its
+    result, and so is that of a task whose worker dies again and again. Raises RunError when no
+    worker process can be kept alive.
     """
     if cores == 1 or len(tasks) == 1:
         for task in tasks:
@@ -40,7 +43,7 @@ def side_by_side(function, tasks, cores, stop, each=lambda record: None, tick=la
                 record = (here or function)(*task)
             except Exception as error:
                 record = error
-            each(record)
+            each(task, record)
         return
     with _cluster(min(cores, len(tasks))) as client:
         _drive(client, function, tasks, stop, each, tick)
@@ -50,12 +53,12 @@ def _drive(client, function, tasks, stop, each, tick):
     from dask.distributed import wait
 
     pending = {
-        client.submit(function, *task, pure=False, retries=0, priority=-i)
+        client.submit(function, *task, pure=False, retries=0, priority=-i): task
         for i, task in enumerate(tasks)
     }
     seen = time.monotonic()
     while pending:
-        if client.scheduler_info(n_workers=1)["workers"]:
+        if client.nthreads():
             seen = time.monotonic()
         elif stop.look():
             raise StopRequested(0, stop.look())
@@ -63,13 +66,12 @@ def _drive(client, function, tasks, stop, each, tick):
             raise RunError("every worker process has died and none could be started again;"
                            " what is complete is kept: see what kills them, then resume")
         try:
-            done = wait(pending, timeout=1.0, return_when="FIRST_COMPLETED").done
+            done = wait(list(pending), timeout=1.0, return_when="FIRST_COMPLETED").done
         except TimeoutError:
             done = set()
         tick()
         for future in done:
-            each(future.exception() or future.result())
-        pending -= done
+            each(pending.pop(future), future.exception() or future.result())
 
 
 @contextlib.contextmanager
@@ -89,14 +91,14 @@ def _cluster(workers):
         "distributed.worker.memory.target": False,
         "distributed.logging": {"distributed": "error", "bokeh": "error"},
     }
-    with dask.config.set(settings), _environment(ONE_THREAD):
+    with dask.config.set(settings), _environment(ONE_THREAD), _hidden_script():
         cluster = LocalCluster(
             n_workers=workers, threads_per_worker=1, processes=True, host="127.0.0.1",
             dashboard_address="127.0.0.1:0", worker_dashboard_address="127.0.0.1:0",
             silence_logs=50, memory_limit=0,
         )
         with cluster, Client(cluster) as client:
-            client.run(_ignore_interrupts)
+            client.register_worker_callbacks(_ignore_interrupts)  # of later workers too
             yield client
 
 
@@ -104,6 +106,24 @@ def _ignore_interrupts():
     """Ctrl-C reaches the whole process group; only the driver may decide what it means."""
     with contextlib.suppress(ValueError):
         signal.signal(signal.SIGINT, signal.SIG_IGN)
+
+
+@contextlib.contextmanager
+def _hidden_script():
+    """Keep spawned workers from importing the driver's script.
+
+    They need nothing of it, and one that calls `launch` outside of ``if __name__ ==
+    "__main__":`` would call it again in every worker. What multiprocessing finds the script
+    by is taken from the main module meanwhile.
+    """
+    names = vars(sys.modules["__main__"])
+    before = {name: names[name] for name in ("__file__", "__spec__") if name in names}
+    names.pop("__file__", None)
+    names["__spec__"] = None
+    try:
+        yield
+    finally:
+        names.update(before)
 
 
 @contextlib.contextmanager

@@ -4,6 +4,7 @@ Everything a run needs is copied into its folder, so that it can be resumed afte
 originals were edited or lost, and on another machine.
 """
 
+import contextlib
 import pathlib
 
 from swirlight import __version__
@@ -13,7 +14,11 @@ from swirlight.config.values import is_path
 from swirlight.errors import InputError
 from swirlight.run.stop import StopFile
 from swirlight.species.library import library_file
-from swirlight.store.durable import make_folder, write_bytes
+from swirlight.store.durable import PARTIAL, make_folder, write_bytes, write_json
+from swirlight.store.lock import FolderLock
+
+# All that there can be before there is a config.
+_BEGINNING = {FolderLock.NAME, ".work", "inputs", "starts", f"config.yaml{PARTIAL}"}
 
 
 class RunFolder:
@@ -32,6 +37,8 @@ class RunFolder:
         self.continuation = self.root / "continuation.h5"
         self.summary = self.root / "summary.json"
         self.picture = self.root / "response.png"
+        self.physics = self.work / "physics.json"
+        self.notes = self.work / "warnings.json"
         self.stop = StopFile(self.work / "stop")
 
     def start(self, index):
@@ -56,38 +63,61 @@ class RunFolder:
         Raises InputError when this is not a run folder.
         """
         if not self.config_file.is_file():
-            raise InputError(f"{self.root}: not a run folder: it has no config.yaml")
+            raise InputError(f"{self.root}: not a run folder: it has no config.yaml"
+                             " (if its launch was interrupted, launch again)")
         return load_config(self.config_file)
 
 
-def create(config, into=None):
-    """Make the run folder of a config.
+@contextlib.contextmanager
+def created(config, into=None, notes=()):
+    """Make the run folder of a config; a context that holds its lock and yields the RunFolder.
 
     into : the folder; the config's `output` (relative to the current folder) if not given.
-    Raises InputError when it exists already, naming `resume`.
+    notes : warnings to keep for the summary.
+    Raises InputError when it exists already, naming `resume`, or cannot be made. The config is
+    written last: without it, what an interruption left is a beginning to be made again.
     """
-    root = pathlib.Path(into if into is not None else config.output)
-    if root.exists() and (not root.is_dir() or any(root.iterdir())):
+    folder = RunFolder(into if into is not None else config.output)
+    _refuse_existing(folder)
+    lock = FolderLock(folder.root)
+    try:
+        lock.acquire()
+    except OSError as error:
+        raise InputError(f"{folder.root}: cannot be made: {error.strerror}; --into names another"
+                         " folder") from None
+    try:
+        _refuse_existing(folder)  # another launch may have been faster
+        _fill(folder, config, notes)
+        yield folder
+    finally:
+        lock.release()
+
+
+def _refuse_existing(folder):
+    root = folder.root
+    if not root.exists():
+        return
+    names = {path.name for path in root.iterdir()} if root.is_dir() else {root.name}
+    begun = FolderLock.NAME in names and names <= _BEGINNING
+    if names and not begun:
         raise InputError(
             f"{root}: exists already; `swirlight resume {root}` goes on with an interrupted run,"
             " --into names another folder"
         )
-    folder = RunFolder(root)
+
+
+def _fill(folder, config, notes):
     resolved = config.resolved()
-    try:
-        for path in (folder.inputs, folder.starts, folder.work):
-            make_folder(path)
-    except OSError as error:
-        raise InputError(f"{root}: cannot be made: {error.strerror}; --into names another folder"
-                         ) from None
-    _copy_inputs(config, resolved, folder)
+    for path in (folder.inputs, folder.starts, folder.work):
+        make_folder(path)
+    _copy_inputs(resolved, folder)
+    write_json(folder.notes, notes)
     text = yaml_text(resolved)
     head = f"# resolved by swirlight {__version__}: every default written out\n"
     write_bytes(folder.config_file, (head + text).encode())
-    return folder
 
 
-def _copy_inputs(config, resolved, folder):
+def _copy_inputs(resolved, folder):
     """Copy species files, envelope tables and a start file; point `resolved` at the copies."""
     for entry in resolved["sample"]["species"]:
         own = is_path(entry["use"])

@@ -8,9 +8,9 @@ Every part is a file that is there when the part is complete, so resuming is lau
 in a folder that holds some of them.
 """
 
+import contextlib
 import os
 import time
-from functools import partial
 
 import numpy as np
 
@@ -18,13 +18,20 @@ from swirlight.config import physical_differences, physical_part
 from swirlight.errors import InputError, RunError, StopRequested
 from swirlight.run import progress as displays
 from swirlight.run.executor import side_by_side
-from swirlight.run.folder import RunFolder, create
+from swirlight.run.folder import RunFolder, created
 from swirlight.run.plan import check_config
 from swirlight.run.rates import record_rate, workload
 from swirlight.run.stop import Signals
 from swirlight.run.summary import write_summary
-from swirlight.run.work import Work, expose, note_failure
-from swirlight.store.durable import remove_folder, write_json
+from swirlight.run.work import (
+    Work,
+    expose,
+    expose_in_worker,
+    note_failure,
+    noting_failure,
+    reason_of,
+)
+from swirlight.store.durable import make_folder, remove_folder, write_json
 from swirlight.store.lock import FolderLock
 from swirlight.store.run import open_run, read_json
 from swirlight.store.start import load_state
@@ -41,12 +48,11 @@ def launch(config, into=None, progress=True, threads=None):
     cannot be finished (the others are), StopRequested after a signal, with everything saved.
     """
     warnings = check_config(config).warnings
-    folder = create(config, into)
-    write_json(folder.work / "warnings.json", [[w.code, w.text] for w in warnings])
-    display = displays.choose(progress)
-    for warning in warnings:
-        display.say(f"warning: {warning.text}")
-    return _carry_out(folder, display, threads)
+    with created(config, into, [[w.code, w.text] for w in warnings]) as folder:
+        display = displays.choose(progress)
+        for warning in warnings:
+            display.say(f"warning: {warning.text}")
+        return _carry_out(folder, display, threads)
 
 
 def resume(path, progress=True, threads=None, config=None):
@@ -60,30 +66,46 @@ def resume(path, progress=True, threads=None, config=None):
     own = folder.config()
     if config is not None and (different := physical_differences(own, config)):
         raise InputError(f"{path}: was begun with other physics:\n" + "\n".join(different))
-    begun = read_json(folder.work / "physics.json")
-    if begun is not None and (different := physical_differences(begun, physical_part(own))):
-        raise InputError(f"{folder.config_file}: was changed after the run began; put it back, or"
-                         " launch it as a run of its own:\n" + "\n".join(different))
-    if folder.summary.is_file() and not folder.work.is_dir():
-        display.say(f"{path}: nothing to do, the run is complete")
-        return open_run(folder.root)
-    return _carry_out(folder, display, threads, resumed=True)
+    with FolderLock(folder.root):
+        begun = read_json(folder.physics)
+        if begun is not None and (different := physical_differences(begun, physical_part(own))):
+            raise InputError(f"{folder.config_file}: was changed after the run began; put it back,"
+                             " or launch it as a run of its own:\n" + "\n".join(different))
+        return _carry_out(folder, display, threads, resumed=True)
 
 
 def _carry_out(folder, display, threads, resumed=False):
-    cores = min(threads or _cores(), _cores())
-    with FolderLock(folder.root):
+    """Do what is left in a folder whose lock is held."""
+    cores = max(1, min(threads or _cores(), _cores()))
+    try:
+        make_folder(folder.work)
         folder.stop.clear()
         with Signals(folder.stop):
-            try:
-                _Conductor(folder, display, cores, resumed).run()
-            finally:
-                display.leave()
+            _Conductor(folder, display, cores, resumed).run()
+    except OSError as error:
+        place = f"{error.filename}: " if error.filename else ""
+        raise RunError(f"{place}{error.strerror or error}; what is finished is kept:"
+                       f" `swirlight resume {folder.root}` goes on") from error
+    finally:
+        display.leave()
     return open_run(folder.root)
 
 
 def _cores():
     return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count()
+
+
+@contextlib.contextmanager
+def _threads(cores):
+    """Let kernels use that many threads, as far as this process was given them."""
+    import numba
+
+    before = numba.get_num_threads()
+    numba.set_num_threads(min(cores, numba.config.NUMBA_NUM_THREADS))
+    try:
+        yield
+    finally:
+        numba.set_num_threads(before)
 
 
 class _Conductor:
@@ -93,20 +115,22 @@ class _Conductor:
         self.folder, self.display, self.cores = folder, display, cores
         self.work = Work(folder)
         self.timings = {}
-        path = folder.work / "physics.json"
-        if not path.is_file():
-            write_json(path, physical_part(self.work.config))
-        if resumed:
-            self._say_where()
+        self.resumed = resumed
+        if not folder.physics.is_file():
+            write_json(folder.physics, physical_part(self.work.config))
 
     def run(self):
         """Do what is left, then summarise and tidy up."""
-        import numba
-
-        numba.set_num_threads(max(1, min(self.cores, numba.config.NUMBA_NUM_THREADS)))
-        self._timed("equilibrate", self._prepare)
-        self._timed("expose", self._expose)
-        self._timed("summarise", lambda: write_summary(self.work, self.timings))
+        complete = all(self.folder.final(e.name).is_file() for e in self.work.exposures)
+        if complete and self.folder.summary.is_file():
+            self.display.say(f"{self.folder.root}: nothing to do, the run is complete")
+        else:
+            if self.resumed:
+                self._say_where()
+            with _threads(self.cores):
+                self._timed("equilibrate", self._prepare)
+                self._timed("expose", self._expose)
+            self._timed("summarise", lambda: write_summary(self.work, self.timings))
         remove_folder(self.folder.work)
 
     def _timed(self, name, action):
@@ -117,11 +141,8 @@ class _Conductor:
     def _prepare(self):
         for name, trajectory, begin in self.work.preparations():
             self.display.phase(name, trajectory.steps)
-            try:
+            with noting_failure(self.folder, trajectory.workdir.name):
                 trajectory.travel(begin, self.folder.stop, self._show)
-            except RunError as error:
-                note_failure(self.folder, trajectory.workdir.name, error)
-                raise
             if trajectory.pace:
                 self._remember_pace(trajectory.pace, self.cores)
             self.display.finish()
@@ -138,9 +159,9 @@ class _Conductor:
         self.display.phase(f"expose ({len(todo)} trajectories)", steps * len(todo))
         self._left, self._failed, self._stopped, self._paces = todo, [], None, []
         side_by_side(
-            expose, [(str(self.folder.root), e.name) for e in todo], self.cores,
+            expose_in_worker, [(str(self.folder.root), e.name) for e in todo], self.cores,
             self.folder.stop, self._take, self._tick,
-            here=partial(expose, report=lambda facts: self._tick()),
+            here=lambda root, name: expose(self.work, name, report=lambda facts: self._tick()),
         )
         if self._stopped is not None:
             raise self._stopped
@@ -154,15 +175,16 @@ class _Conductor:
             ))
         self.display.finish()
 
-    def _take(self, record):
-        if isinstance(record, StopRequested):
-            self._stopped = max(self._stopped or record, record, key=lambda stop: stop.step)
-        elif isinstance(record, Exception):
-            self._failed.append(("?", f"{type(record).__name__}: {record}"))
-        elif record["failed"]:
-            self._failed.append((record["name"], record["failed"]))
-        elif record["pace"]:
-            self._paces.append(record["pace"])
+    def _take(self, task, found):
+        _, name = task
+        if isinstance(found, StopRequested):
+            self._stopped = max(self._stopped or found, found, key=lambda stop: stop.step)
+        elif isinstance(found, Exception):
+            self._failed.append((name, reason_of(found)))
+            if not self.folder.failure(name).is_file():  # the worker died before it could tell
+                note_failure(self.folder, name, found)
+        elif found:
+            self._paces.append(found)
         self._tick()
 
     def _tick(self):

@@ -36,7 +36,7 @@ def write_summary(work, timings):
         "ledgers": _ledgers(run, work.exposures, bodies),
         "heating": _heating(run, work) if found else {},
         "timings": {name: {"value": t, "unit": "s"} for name, t in timings.items()},
-        "warnings": [*(read_json(work.folder.work / "warnings.json") or []), *_unsettled(work)],
+        "warnings": [*(read_json(work.folder.notes) or []), *_unsettled(work)],
     }
     if found:
         _draw(run, work, found)

@@ -7,6 +7,7 @@ frames of the unfinished segment. A step whose energies were recorded has its fo
 calculated again with energies on resume: the same kernel, the same bits.
 """
 
+import contextlib
 import math
 import time
 from dataclasses import dataclass, field
@@ -177,5 +178,6 @@ class Trajectory:
         done = sum(leg.steps for leg in self.legs[:index]) + step
         facts = {"step": done, "steps": self.steps, "rate": rate, "stage": self.legs[index].name,
                  **recorder.latest}
-        write_json(self.workdir / "progress.json", facts, sync=False)
+        with contextlib.suppress(OSError):  # a full disk is the writer's to report
+            write_json(self.workdir / "progress.json", facts, sync=False)
         self._report(facts)

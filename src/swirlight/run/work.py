@@ -1,11 +1,12 @@
 """What a run folder asks for, as trajectories that can be travelled."""
 
-import pathlib
-from functools import cached_property
+import contextlib
+import traceback
+from functools import cache, cached_property
 
 import numpy as np
 
-from swirlight.errors import RunError, StopRequested
+from swirlight.errors import RunError, StopRequested, SwirlightError
 from swirlight.light.build import bias_from_config, pulses_from_config
 from swirlight.run.build import first_state
 from swirlight.run.exposures import list_exposures
@@ -16,7 +17,7 @@ from swirlight.run.response import beam
 from swirlight.run.sample import build_system
 from swirlight.run.spacing import SAFETY, correlation_times
 from swirlight.run.trajectory import Clock, Leg, Trajectory
-from swirlight.store.durable import remove_folder, write_json
+from swirlight.store.durable import make_folder, remove, remove_folder, write_json
 from swirlight.store.run import open_run
 from swirlight.store.start import load_state, save_state
 
@@ -55,7 +56,8 @@ class Work:
             if not self.folder.start(0).is_file():
                 self._save_start(0, first_state(self.config, self.system))
             return
-        if not self.folder.equilibrium.is_file():
+        chain_lost = not (self._chain_file.is_file() or self.folder.continuation.is_file())
+        if not self.folder.equilibrium.is_file() or (self.starts > 1 and chain_lost):
             begin = lambda: first_state(self.config, self.system)  # noqa: E731
             yield "equilibrate", self._equilibrium(unlit), begin
         if self.starts > 1 and not self.folder.continuation.is_file():
@@ -171,32 +173,57 @@ class Work:
         )
 
 
-_known = {}
+@contextlib.contextmanager
+def noting_failure(folder, name):
+    """Leave in the run folder why trajectory `name` failed inside; an earlier failure is over."""
+    remove(folder.failure(name))
+    try:
+        yield
+    except StopRequested:
+        raise
+    except Exception as error:
+        note_failure(folder, name, error)
+        raise
 
 
-def note_failure(folder, name, reason):
-    """Leave in the run folder why the trajectory `name` could not be finished."""
-    write_json(pathlib.Path(folder.failure(name)), {"name": name, "reason": str(reason)})
+def note_failure(folder, name, error):
+    """Leave in the run folder why trajectory `name` cannot be finished, if it can be written."""
+    path = folder.failure(name)
+    with contextlib.suppress(OSError):  # it may be the disk that failed
+        make_folder(path.parent)
+        write_json(path, {"name": name, "reason": reason_of(error),
+                          "traceback": traceback.format_exception(error)})
 
 
-def expose(root, name, report=lambda facts: None):
-    """Carry one exposure to its end; the task of a worker process.
+def reason_of(error):
+    """Why something failed, in words; what was not raised on purpose names its type."""
+    return str(error) if isinstance(error, SwirlightError) else f"{type(error).__name__}: {error}"
 
-    root : the run folder; name : of the exposure; report : as of `Trajectory.travel`.
-    Returns {"name", "failed": reason or None, "pace": steps per second or None if there was
-    nothing to do}; a stop request is raised as StopRequested.
+
+def expose(work, name, report=lambda facts: None):
+    """Carry one exposure to its end.
+
+    name : of the exposure; report : as of `Trajectory.travel`.
+    Returns its steps per second, None if there was nothing to do or to measure. Raises
+    StopRequested, and whatever keeps it from being finished, once that is noted in the folder.
     """
-    folder = RunFolder(root)
+    folder = work.folder
     if folder.final(name).is_file():
         remove_folder(folder.working(name))
-        return {"name": name, "failed": None, "pace": None}
-    if folder.stop.look():
-        raise StopRequested(0, folder.stop.look())
-    work = _known.get(root) or _known.setdefault(root, Work(folder))
-    trajectory, begin = work.exposure(name)
-    try:
+        return None
+    if number := folder.stop.look():
+        raise StopRequested(0, number)
+    with noting_failure(folder, name):
+        trajectory, begin = work.exposure(name)
         trajectory.travel(begin, folder.stop, report)
-    except RunError as error:
-        note_failure(folder, name, error)
-        return {"name": name, "failed": str(error), "pace": None}
-    return {"name": name, "failed": None, "pace": trajectory.pace}
+    return trajectory.pace
+
+
+def expose_in_worker(root, name):
+    """The same as the task of a worker process, which serves one run folder all its life."""
+    return expose(_work_in(root), name)
+
+
+@cache
+def _work_in(root):
+    return Work(RunFolder(root))

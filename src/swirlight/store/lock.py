@@ -28,7 +28,11 @@ class FolderLock:
         self._descriptor = None
 
     def acquire(self):
-        """Take the lock. Raises InputError, saying who holds it, when another writer does."""
+        """Take the lock.
+
+        Raises InputError, saying who holds it, when another writer does; OSError where the
+        folder cannot be made or locked.
+        """
         make_folder(self.folder)
         path, holder = self.folder / self.NAME, ""
         for _ in range(ATTEMPTS):
@@ -40,6 +44,10 @@ class FolderLock:
                     break
             except BlockingIOError:
                 holder = os.pread(descriptor, 200, 0).decode(errors="replace").strip()
+            except OSError as error:
+                os.close(descriptor)
+                raise OSError(error.errno, f"{error.strerror} (some network file systems cannot"
+                              " lock; use a folder on another one)", str(path)) from None
             os.close(descriptor)
             time.sleep(PAUSE)
         else:
