@@ -60,3 +60,16 @@ print(kernel(f)(1))
                           text=True)
     assert done.stdout == "2\n", done.stderr
     assert "compiled at each start" in done.stderr
+
+
+def test_a_cache_folder_of_the_users_own_is_keyed_by_the_sources_too(tmp_path, monkeypatch):
+    """Or it would give the old code of an edited callee; what a worker inherits stays as it is."""
+    from swirlight.compiled import cache_folder
+
+    monkeypatch.setenv("NUMBA_CACHE_DIR", str(tmp_path))
+    mine = cache_folder()
+    assert mine.parent == tmp_path and mine.name.startswith("kernels-")
+    monkeypatch.setenv("NUMBA_CACHE_DIR", str(mine))
+    assert cache_folder() == mine
+    monkeypatch.delenv("NUMBA_CACHE_DIR")
+    assert cache_folder().name == mine.name and cache_folder() != mine

@@ -1,8 +1,9 @@
 """How kernels are compiled: one decorator, one cache, explicit floating-point flags.
 
-numba's own cache does not notice an edited callee, so the cache folder is keyed by the
-package version and a hash of every source file that may hold a kernel. A package folder
-that cannot be cached (read-only, or not a file) still works: it compiles at each start.
+numba's own cache does not notice an edited callee, other flags or other constants, so the
+cache folder is named by a hash of every source file that may hold a kernel, and of this one.
+A package folder that cannot be cached (read-only, or not a file) still works: it compiles at
+each start.
 """
 
 import hashlib
@@ -22,22 +23,25 @@ CHUNKS = 32
 def _source_hash():
     root = pathlib.Path(__file__).parent
     digest = hashlib.sha256()
-    for path in sorted(p for room in KERNEL_ROOMS for p in (root / room).rglob("*.py")):
+    kernels = sorted(p for room in KERNEL_ROOMS for p in (root / room).rglob("*.py"))
+    for path in [pathlib.Path(__file__), *kernels]:
         digest.update(path.name.encode() + b"\0" + path.read_bytes())
     return digest.hexdigest()[:12]
 
 
 def cache_folder():
-    """The folder that holds compiled kernels: NUMBA_CACHE_DIR if set, else the user's cache."""
+    """Where compiled kernels are kept: in NUMBA_CACHE_DIR if set, else in the user's cache."""
+    name, given = f"kernels-{_source_hash()}", os.environ.get("NUMBA_CACHE_DIR")
+    if given:  # worker processes inherit what was set below
+        return pathlib.Path(given) if os.path.basename(given) == name else pathlib.Path(given, name)
     base = os.environ.get("XDG_CACHE_HOME") or pathlib.Path.home() / ".cache"
-    return pathlib.Path(base) / "swirlight" / f"kernels-{_source_hash()}"
+    return pathlib.Path(base) / "swirlight" / name
 
 
 if "numba" not in sys.modules:
     # Idle OpenMP threads must sleep: on a busy machine spinning ones cost a factor of ten.
     os.environ.setdefault("OMP_WAIT_POLICY", "PASSIVE")
-if not os.environ.get("NUMBA_CACHE_DIR"):
-    os.environ["NUMBA_CACHE_DIR"] = str(cache_folder())
+os.environ["NUMBA_CACHE_DIR"] = str(cache_folder())
 
 import numba  # noqa: E402
 

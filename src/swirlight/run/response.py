@@ -50,18 +50,40 @@ def signal_of(trajectory, signal, k):
     return np.asarray(trajectory["alignment"], float)
 
 
+def open_all(run, exposures):
+    """{(kind, start, phase): Trajectory} of those that are there, each looked through once.
+
+    Their files are closed again, as there may be thousands; reading opens them.
+    """
+    found = {}
+    for e in exposures:
+        key = (e.kind, e.start, e.phase)
+        if key in run:
+            found[key] = run[key]
+            found[key].close()
+    return found
+
+
 def collect(run, exposures, read):
     """Kind -> (starts, T): `read(trajectory)` after the mean over carrier phases.
 
-    Only starts of which every exposure is complete count, so that twins stay paired.
+    run : of `open_all`. Only starts of which every exposure is complete count, so that twins
+        stay paired.
     """
     names = [(e.kind, e.start, e.phase) for e in exposures]
     there = {key for key in names if key in run and run[key].complete}
     whole = sorted({s for _, s, _ in names} - {key[1] for key in set(names) - there})
     rows = {}
+
+    def read_and_close(trajectory):
+        value = read(trajectory)
+        trajectory.close()
+        return value
+
     for kind in dict.fromkeys(e.kind for e in exposures):
         rows[kind] = np.array([
-            np.mean([read(run[key]) for key in names if key[:2] == (kind, start)], axis=0)
+            np.mean([read_and_close(run[key]) for key in names if key[:2] == (kind, start)],
+                    axis=0)
             for start in whole
         ])
     return rows

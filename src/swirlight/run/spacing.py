@@ -18,9 +18,10 @@ def autocorrelation(series):
     series : (frames, bodies, components).
     Returns (frames // 2,): longer lags have too few origins.
     """
-    frames = len(series)
-    spectrum = np.fft.rfft(series, n=2 * frames, axis=0)
-    power = (spectrum.real**2 + spectrum.imag**2).sum(axis=(1, 2))
+    frames, power = len(series), 0.0
+    for body in np.moveaxis(series, 1, 0):  # one at a time: transforms of all would not fit
+        spectrum = np.fft.rfft(body, n=2 * frames, axis=0)
+        power = power + (spectrum.real**2 + spectrum.imag**2).sum(axis=1)
     raw = np.fft.irfft(power, n=2 * frames)[: frames // 2]
     c = raw / (frames - np.arange(frames // 2))
     return c / c[0]

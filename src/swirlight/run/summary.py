@@ -6,7 +6,7 @@ from swirlight import __version__, units
 from swirlight.config import config_hash
 from swirlight.run.estimate import mean_and_error
 from swirlight.run.picture import draw_response
-from swirlight.run.response import at_the_end_of_light, collect, curves, end_of_light
+from swirlight.run.response import at_the_end_of_light, collect, curves, end_of_light, open_all
 from swirlight.store.durable import write_json
 from swirlight.store.run import open_run, read_json
 
@@ -19,7 +19,7 @@ def write_summary(work, timings):
     work : Work, its exposures complete; timings : phase -> seconds.
     Returns the summary.
     """
-    run = open_run(work.folder.root)
+    run = open_all(open_run(work.folder.root), work.exposures)
     found = curves(run, work.exposures, work.pulses) if work.pulses else {}
     bodies = work.system.bodies
     summary = {
@@ -67,6 +67,7 @@ def _exposure(run, exposure, bodies):
             "value": float(np.abs(np.asarray(totals["energy_residual"])).max()) / bodies,
             "unit": "kJ mol-1", "per": "body", "of": "largest magnitude",
         }
+        totals.close()
     return entry
 
 
@@ -92,10 +93,11 @@ def _averages(run, exposures, bodies):
 
 
 def blocking_error(series):
-    """Standard error of a correlated series' mean (Flyvbjerg & Petersen, J. Chem. Phys. 91, 461).
+    """Standard error of a correlated series' mean.
 
-    Blocks are paired until 16 are left; the largest estimate counts, which is never too small
-    by more than its own scatter. NaN for fewer than 32 numbers.
+    Flyvbjerg & Petersen, J. Chem. Phys. 91, 461 (1989). Blocks are paired until there are fewer
+    than 16; the largest estimate counts, which is never too small by more than its own
+    scatter. NaN for fewer than 16 numbers.
     """
     series, best = np.asarray(series, float), np.nan
     while len(series) >= 16:

@@ -89,14 +89,13 @@ class Work:
         last = self.config.stages[-2]
         momentum, axis = record["watched/angular_momentum"], record["watched/axis_z"]
         # only the last unlit stage, and of it the second half: the first still settles
-        keep = momentum.times >= momentum.times[-1] - 0.5 * last.length
+        keep = slice(np.searchsorted(momentum.times, momentum.times[-1] - 0.5 * last.length), None)
         bodies, found = watched_bodies(self.system), {}
         for k, species in enumerate(self.system.species):
             rows = np.flatnonzero(self.system.species_of[bodies] == k)
             if len(rows):
                 times = correlation_times(
-                    np.asarray(momentum)[keep][:, rows], np.asarray(axis)[keep][:, rows],
-                    momentum.interval,
+                    momentum[keep, rows], axis[keep, rows], momentum.interval,
                 )
                 found[species.name] = times
         if not found:

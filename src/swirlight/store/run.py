@@ -75,15 +75,21 @@ class Run:
             yield self._trajectory(exposure.name)
 
     def __contains__(self, key):
-        return _exposure(key) in self.exposures
+        return self._there(_exposure(key))
 
     def __getitem__(self, key):
         """A `Trajectory`; raises KeyError listing what there is."""
         exposure = _exposure(key)
-        if exposure not in self.exposures:
+        if not self._there(exposure):
             there = ", ".join(e.name for e in self.exposures) or "no trajectory yet"
             raise KeyError(f"{self.path} has no {exposure.name}; it has {there}")
         return self._trajectory(exposure.name)
+
+    def _there(self, exposure):
+        """Whether it can be read; looks for its own files only, as there may be thousands."""
+        segments = self.path / WORK / exposure.name / "segments"
+        return exposure.kind in KINDS and (
+            (self.path / f"{exposure.name}.h5").is_file() or any(segments.glob("*.h5")))
 
     @property
     def equilibrium(self):
