@@ -171,3 +171,30 @@ def test_the_caller_keeps_its_threads(config, tmp_path):
     before = numba.get_num_threads()
     launch(config, into=tmp_path / "a", progress=False, threads=1)
     assert numba.get_num_threads() == before
+
+
+def test_checkpoints_by_the_clock_bound_what_a_kill_costs_and_change_no_byte(config, expected,
+                                                                             tmp_path,
+                                                                             monkeypatch):
+    """Saved at every step; then each trajectory is left once, right after a checkpoint."""
+    folder, plain, left = tmp_path / "a", Trajectory._checkpoint, set()
+
+    class Killed(BaseException):
+        pass
+
+    def checkpoint(self, state, index, step, mover):
+        plain(self, state, index, step, mover)
+        if step == 17 and self.final.stem not in left:
+            left.add(self.final.stem)
+            raise Killed
+
+    monkeypatch.setattr(Trajectory, "_checkpoint", checkpoint)
+    monkeypatch.setattr("swirlight.run.trajectory.SAVE_EVERY", 0.0)
+    with pytest.raises(Killed):
+        launch(config, into=folder, progress=False, threads=1)
+    for _ in range(7):
+        with pytest.raises(Killed):
+            resume(folder, progress=False, threads=1)
+    resume(folder, progress=False, threads=1)
+    assert left == {"equilibrium", "continuation"} | {n[:-3] for n in expected if "-" in n}
+    assert fingerprints(folder) == expected

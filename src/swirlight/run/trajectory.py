@@ -23,6 +23,7 @@ from swirlight.store.durable import make_folder, write_json
 from swirlight.store.writer import TrajectoryWriter, load_checkpoint, segment_steps
 
 REPORT_EVERY = 1.0  # s between progress reports
+SAVE_EVERY = 300.0  # s at most that a kill may cost; files do not depend on it
 
 
 @dataclass(frozen=True)
@@ -119,6 +120,7 @@ class Trajectory:
             at, self._tick = (0, 0), 0
         self._writer, self._stop, self._report = writer, stop, report
         self._reported, self._timed_steps, self._seconds = 0.0, 0, 0.0
+        self._saved = time.monotonic()
         try:
             for index in range(at[0], len(self.legs)):
                 first = index == at[0]
@@ -147,7 +149,7 @@ class Trajectory:
             due = recorder.frames(self._tick, state, mover)
             if due:
                 writer.append(self._tick, due)
-            if writer.seal_due(self._tick):
+            if writer.seal_due(self._tick) or time.monotonic() - self._saved > SAVE_EVERY:
                 self._checkpoint(state, index, step, mover)
             number = self._stop.requested()
             if number:
@@ -165,6 +167,7 @@ class Trajectory:
         self.leg_done(index, state)
 
     def _checkpoint(self, state, index, step, mover):
+        self._saved = time.monotonic()
         self._writer.checkpoint(self._tick, {
             "state": state,
             "field": self._field.memory(),
