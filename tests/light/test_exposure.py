@@ -9,7 +9,12 @@ from swirlight.light.envelope import Gaussian
 from swirlight.light.exposure import dark, exposed, mirrored, with_phase
 from swirlight.light.polarisation import transverse_axes, unit_direction
 from swirlight.light.pulse import Pulse
-from swirlight.light.schedule import coherency_rows, group_amplitude, resolved_field
+from swirlight.light.schedule import (
+    coherency_rows,
+    group_amplitude,
+    make_block,
+    resolved_field,
+)
 
 TIMES = np.linspace(0.0, 5.0, 41)
 
@@ -36,6 +41,17 @@ def test_one_pulse_keeps_its_coherency_and_reverses_g_to_the_last_bit(direction,
     np.testing.assert_array_equal(plus[:, :6], minus[:, :6])
     np.testing.assert_array_equal(plus[:, 6:], -minus[:, 6:])
     assert np.abs(plus[:, 6:]).max() > 1.0
+
+
+def test_so_does_every_copy_of_a_train_and_a_second_pulse_after_the_first():
+    train = pulse(azimuth=0.4, ellipticity=0.5, count=3, period=14.0, carrier=2001.7)
+    later = pulse(azimuth=0.4, ellipticity=-0.2, centre=50.0, phase=0.9, carrier=2003.0)
+    times = np.linspace(0.0, 60.0, 2401)
+    plus, minus = (make_block(times, (x,), (), None).coherency[:, 0]
+                   for x in ((train, later), mirrored((train, later))))
+    np.testing.assert_array_equal(plus[:, :6], minus[:, :6])
+    np.testing.assert_array_equal(plus[:, 6:], -minus[:, 6:])
+    assert all(np.abs(plus[round(t * 40), 8]) > 1.0 for t in (2.0, 16.0, 30.0, 50.0))
 
 
 def test_every_exposed_pulse_is_mirrored_in_one_plane():
@@ -80,6 +96,25 @@ def test_probes_stay_in_every_kind():
     assert mirrored(pulses)[0] is probe and mirrored(pulses)[1].ellipticity == -pi / 4
     assert dark(pulses) == (probe,)
     assert mirrored((probe,)) == (probe,)
+
+
+def test_a_probe_has_the_same_bits_in_every_kind():
+    """Averaged beside the exposed pulse, where that is over; resolved, as a colour of its own."""
+    pump = pulse(carrier=2000.0, ellipticity=0.5, azimuth=0.3, phase=0.8)
+    probe = pulse(carrier=2004.0, in_kinds="same", centre=20.0, direction="x", phase=0.2)
+    wave = pulse(in_kinds="same", coupling="resolved", centre=3.0)
+    blocks = []
+    for change in (lambda pulses: pulses, mirrored, dark):
+        seen = change((pump, probe, wave))
+        averaged = tuple(p for p in seen if p.coupling == "averaged")
+        blocks.append(make_block(np.linspace(0, 25, 1001), (averaged,), ((seen[-1],),), None))
+    plus, minus, unlit = blocks
+    late = plus.times > 9.0  # the exposed pulse is over
+    for other in (minus, unlit):
+        np.testing.assert_array_equal(plus.coherency[late], other.coherency[late])
+        np.testing.assert_array_equal(plus.wave, other.wave)
+    assert plus.coherency[late].any() and plus.wave.any()
+    assert not np.array_equal(plus.coherency, minus.coherency)
 
 
 def test_only_resolved_carriers_are_shifted():

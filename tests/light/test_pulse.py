@@ -92,6 +92,14 @@ def test_faint_light_is_none_at_all():
     assert not values[0].any() and values[1].any()
 
 
+def test_edges_of_a_rectangle_that_steps_meet_count_half_wherever_it_stands():
+    times = 0.001 * np.arange(2000)
+    for centre in np.round(np.arange(0.3, 1.2, 0.017), 3):
+        p = pulse(amplitude=1.0, envelope=Rectangle(0.246), centre=centre)
+        shape = (np.abs(p.amplitude_at(times - centre)) ** 2).sum(axis=1)
+        assert 0.001 * shape.sum() == pytest.approx(0.246, rel=1e-12)
+
+
 def test_bias_is_on_from_its_beginning_until_its_end():
     field = Bias((0.0, 0.0, 2.0), begin=1.0, end=2.0).field([0.5, 1.0, 1.5, 2.0])
     np.testing.assert_array_equal(field[:, 2], [0, 2, 2, 0])

@@ -44,14 +44,18 @@ class FieldBlock:
     field: np.ndarray
 
 
-def group_amplitude(pulses, times, local=False):
+def group_amplitude(pulses, times, local=False, lone_phase=True):
     """Σ 𝓔_j exp(−iω_j(t − t_j) − iφ_j) over pulses and copies, complex (T, 3).
 
     The fast phase of the first pulse's first copy is divided out, so that one pulse alone
-    gives exactly its own 𝓔 exp(iφ). `local` : at the bodies, with the local field.
+    gives exactly its own 𝓔 exp(iφ).
+    local : at the bodies, with the local field.
+    lone_phase : False: a copy that shines alone is left without its phase. S and G do not see
+        it, and so mirrored light keeps S to the last bit in every copy of a train.
     """
     times = np.asarray(times, float)
-    total = np.zeros((*times.shape, 3), complex)
+    total, bare = np.zeros((2, *times.shape, 3), complex)
+    shining = np.zeros(times.shape, int)
     first = pulses[0]
     for pulse, centre in _copies(pulses, times):
         phase = (
@@ -59,9 +63,11 @@ def group_amplitude(pulses, times, local=False):
             - pulse.carrier * centre + first.carrier * first.centre
             + (pulse.phase - first.phase)
         )
-        amplitude = pulse.amplitude_at(times - centre) * np.exp(-1j * phase)[..., None]
-        total += (pulse.local_factor if local else 1.0) * amplitude
-    return total
+        own = (pulse.local_factor if local else 1.0) * pulse.amplitude_at(times - centre)
+        total += own * np.exp(-1j * phase)[..., None]
+        bare += own
+        shining += own.any(axis=-1)
+    return total if lone_phase else np.where((shining < 2)[..., None], bare, total)
 
 
 def resolved_field(pulses, times):
@@ -105,17 +111,19 @@ def make_block(times, groups, colours, bias):
     times = np.asarray(times, float)
     count = len(times)
     coherency, wave = np.zeros((count, len(groups), 9)), np.zeros((count, len(colours), 6))
-    amplitudes = [group_amplitude(g, times) for g in (*groups, *colours)]
+    amplitudes = [group_amplitude(g, times, lone_phase=False) for g in (*groups, *colours)]
     for n, group in enumerate(groups):
         dressed = any(p.local_factor != 1.0 for p in group)
-        at_bodies = group_amplitude(group, times, local=True) if dressed else amplitudes[n]
+        at_bodies = amplitudes[n]
+        if dressed:
+            at_bodies = group_amplitude(group, times, local=True, lone_phase=False)
         coherency[:, n] = coherency_rows(at_bodies)
     for n, colour in enumerate(colours):
         wave[:, n, :3], wave[:, n, 3:] = resolved_field(colour, times)
     reported = np.zeros((count, 3), complex)
     if amplitudes:
-        first = (*groups, *colours)[0][0]
-        reported = amplitudes[0] * np.exp(-1j * first.phase)
+        first = (*groups, *colours)[0]
+        reported = group_amplitude(first, times) * np.exp(-1j * first[0].phase)
     return FieldBlock(
         times=times,
         coherency=coherency,
