@@ -58,9 +58,12 @@ def test_light_moves_the_bodies_and_the_starts_differ(run):
 def test_noise_depends_on_seed_and_start_alone(run):
     first, second = (load_state(path) for path in run.starts)
     assert first.random.random() != second.random.random()
-    seeds = np.random.SeedSequence((3, 1))
+    seeds = np.random.SeedSequence(3, spawn_key=(1,))
     expected = np.random.Generator(np.random.PCG64(seeds)).random()
     assert load_state(run.starts[1]).random.random() == expected
+    # and not that of the lattice again
+    lattice = np.random.Generator(np.random.PCG64(np.random.SeedSequence(3)))
+    assert load_state(run.starts[0]).random.random() != lattice.random()
 
 
 def test_a_complete_run_says_so(run):

@@ -142,9 +142,12 @@ class Work:
         return load_state(self._chain_file, self.system)
 
     def _save_start(self, index, state):
-        """Save a start with noise of its own, which depends on (seed, start) alone."""
+        """Save a start with noise of its own, which depends on (seed, start) alone.
+
+        A spawn key, as SeedSequence takes (seed, 0) and seed, which drew the lattice, for one.
+        """
         start = state.copy()
-        seeds = np.random.SeedSequence((self.config.seed, index))
+        seeds = np.random.SeedSequence(self.config.seed, spawn_key=(index,))
         start.random = np.random.Generator(np.random.PCG64(seeds))
         save_state(self.folder.start(index), start, self.system)
 
