@@ -14,7 +14,8 @@ import time
 
 import numpy as np
 
-from swirlight.config import physical_differences, physical_part
+from swirlight import __version__
+from swirlight.config import config_hash, physical_differences, physical_part
 from swirlight.errors import InputError, RunError, StopRequested
 from swirlight.run import progress as displays
 from swirlight.run.executor import side_by_side
@@ -67,11 +68,25 @@ def resume(path, progress=True, threads=None, config=None):
     if config is not None and (different := physical_differences(own, config)):
         raise InputError(f"{path}: was begun with other physics:\n" + "\n".join(different))
     with FolderLock(folder.root):
-        begun = read_json(folder.physics)
-        if begun is not None and (different := physical_differences(begun, physical_part(own))):
-            raise InputError(f"{folder.config_file}: was changed after the run began; put it back,"
-                             " or launch it as a run of its own:\n" + "\n".join(different))
+        _hold_against_beginning(folder, own, display)
         return _carry_out(folder, display, threads, resumed=True)
+
+
+def _hold_against_beginning(folder, config, display):
+    """Refuse a config edited since the run began; warn of another version of the program."""
+    begun = read_json(folder.physics)
+    if begun is not None:
+        different = physical_differences(begun["physics"], physical_part(config))
+        if begun["version"] != __version__:
+            display.say(f"warning: begun with swirlight {begun['version']}, resumed with"
+                        f" {__version__}: the bits may differ from those of one version")
+    else:  # complete before: only the hash is left
+        summary = read_json(folder.summary) or {}
+        changed = summary.get("config_hash") not in (None, config_hash(config))
+        different = ["what differs is no longer known"] * changed
+    if different:
+        raise InputError(f"{folder.config_file}: was changed after the run began; put it back,"
+                         " or launch it as a run of its own:\n" + "\n".join(different))
 
 
 def _carry_out(folder, display, threads, resumed=False):
@@ -117,7 +132,8 @@ class _Conductor:
         self.timings = {}
         self.resumed = resumed
         if not folder.physics.is_file():
-            write_json(folder.physics, physical_part(self.work.config))
+            write_json(folder.physics, {"version": __version__,
+                                        "physics": physical_part(self.work.config)})
 
     def run(self):
         """Do what is left, then summarise and tidy up."""

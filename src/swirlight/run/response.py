@@ -17,13 +17,18 @@ from swirlight.run.estimate import even_odd, half_width, mean_and_error
 from swirlight.units import HBAR
 
 SIGNALS = {"light_impulse": "hbar", "angular_momentum": "hbar", "alignment": ""}
+SHOWN = 2000  # rows of a curve; more would only fill memory
 CLEAR, HINT = 0.001, 0.05  # p of the odd part that is called a detection, and a hint
 
 
 @dataclass(frozen=True)
 class Curves:
-    """One signal along time over all starts: times (T,) [ps], even and odd (starts, T)."""
+    """One signal along time over all starts, thinned where there are very many rows.
 
+    rows : (T,) which rows of the files; times : (T,) [ps]; even, odd : (starts, T).
+    """
+
+    rows: np.ndarray
     times: np.ndarray
     even: np.ndarray | None
     odd: np.ndarray
@@ -91,19 +96,25 @@ def collect(run, exposures, read):
 
 def curves(run, exposures, pulses):
     """Signal -> Curves; empty without both lit kinds or without a complete start."""
-    kinds = {e.kind for e in exposures}
-    if not {"plus", "minus"} <= kinds:
+    if not {"plus", "minus"} <= {e.kind for e in exposures} or not run:
         return {}
     k, found = beam(pulses), {}
+    times = next(iter(run.values()))["light_impulse"].times
+    rows = _shown(times, pulses)
     for signal, unit in SIGNALS.items():
-        rows = collect(run, exposures, lambda t, s=signal: signal_of(t, s, k))
-        if not len(rows["plus"]):
+        kinds = collect(run, exposures, lambda t, s=signal: signal_of(t, s, k)[rows])
+        if not len(kinds["plus"]):
             return {}
-        first = run[exposures[0].kind, exposures[0].start, exposures[0].phase]
-        times = first["light_impulse"].times
-        parts = even_odd(rows["plus"], rows["minus"], rows.get("dark"))
-        found[signal] = Curves(times, *parts, unit)
+        parts = even_odd(kinds["plus"], kinds["minus"], kinds.get("dark"))
+        found[signal] = Curves(rows, times[rows], *parts, unit)
     return found
+
+
+def _shown(times, pulses):
+    """At most `SHOWN` rows, evenly spread, and that of the end of the light."""
+    end = min(int(np.searchsorted(times, end_of_light(pulses) - 1e-9)), len(times) - 1)
+    stride = -(-len(times) // SHOWN)
+    return np.union1d(np.arange(0, len(times), stride), end)
 
 
 def at_the_end_of_light(found, pulses):

@@ -35,7 +35,7 @@ def read_status(path):
     return {
         "folder": str(folder.root),
         "state": "complete" if folder.summary.is_file() and len(done) == len(names)
-        else "running" if running else "interrupted",
+        else "running" if running else "failed" if failed else "interrupted",
         "equilibrated": not unlit or folder.equilibrium.is_file(),
         "trajectories": len(names), "complete": len(done),
         "under_way": under_way, "failed": failed,
@@ -63,6 +63,7 @@ def status_text(status):
         lines.append(f"  {name}: step {p['step']} of {p['steps']}, {p['rate']:.0f} steps/s")
     for name, reason in status["failed"].items():
         lines.append(f"  {name}: failed: {reason}")
-    if status["state"] == "interrupted":
-        lines.append(f"`swirlight resume {status['folder']}` goes on")
+    if status["state"] in ("interrupted", "failed"):
+        again = "goes on" if status["state"] == "interrupted" else "tries again"
+        lines.append(f"`swirlight resume {status['folder']}` {again}")
     return "\n".join(lines)

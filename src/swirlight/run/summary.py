@@ -160,8 +160,9 @@ def _draw(run, work, found):
     times = np.linspace(0.0, work.config.stages[-1].length, 1000)
     intensity = sum(_intensity(pulse, times) for pulse in work.pulses)
     bodies = work.system.bodies
-    rows = collect(run, work.exposures, lambda t: np.asarray(t["energy_residual"]) / bodies)
     curve = found["angular_momentum"]
+    rows = collect(run, work.exposures,
+                   lambda t: np.asarray(t["energy_residual"])[curve.rows] / bodies)
     residuals = {kind: (curve.times, values) for kind, values in rows.items()}
     draw_response(work.folder.picture, work.config.title, curve, (times, intensity), residuals,
                   end_of_light(work.pulses))

@@ -99,7 +99,7 @@ def trajectories(subject):
         own = [e for e in exposures if e.kind == kind]
         starts = len({e.start for e in own})
         rows.append(Row(kind, len(own), "trajectories",
-                        f"{starts} starts × {own[0].phases} carrier phases"))
+                        _product(starts, own[0].phases)))
     rows.append(Row("trajectories", len(exposures)))
     if settings is not None and settings.starts > 1:
         rows.append(Row("spacing", "chosen while equilibrating", "", "three times the slowest"
@@ -127,3 +127,10 @@ def boundary(subject):
     elif kind == "damped-shifted":
         yield Notice("applied-field", "forces.electrostatics: damped-shifted has no clean"
                      " boundary: compare the response to an applied field with mesh-ewald")
+
+
+def _product(starts, phases):
+    def counted(n, word):
+        return f"{n} {word}" + "s" * (n != 1)
+
+    return f"{counted(starts, 'start')} × {counted(phases, 'carrier phase')}"
