@@ -27,14 +27,22 @@ def degrees_of_freedom(system, momentum_conserved):
     return Freedom(translation, int(system.freedom.sum()))
 
 
+def spares_momentum(thermostat):
+    """Whether a thermostat (or None) leaves the total momentum of the box alone."""
+    return thermostat is None or thermostat.conserves_momentum
+
+
 def conserves_momentum(system, thermostat, light):
     """Whether a stage keeps the total momentum of the box.
 
     thermostat : None or a thermostat with `conserves_momentum`.
-    light : None, or fields that push a box with a net charge.
+    light : None, or something with `pulses` and `bias`. Only carrier-resolved pulses and a
+        static field push a net charge; averaged light pushes nothing.
     """
-    pushed = light is not None and abs(float(system.charge.sum())) > NEUTRAL
-    return not pushed and (thermostat is None or thermostat.conserves_momentum)
+    charged = abs(float(system.charge.sum())) > NEUTRAL
+    pushed = charged and light is not None and (
+        light.bias is not None or any(p.coupling == "resolved" for p in light.pulses))
+    return not pushed and bool(spares_momentum(thermostat))
 
 
 def remove_total_momentum(system, state):

@@ -13,7 +13,12 @@ import numpy as np
 
 from swirlight.errors import RunError
 from swirlight.motion.energy import kinetic_energies
-from swirlight.motion.freedom import conserves_momentum, degrees_of_freedom, remove_total_momentum
+from swirlight.motion.freedom import (
+    conserves_momentum,
+    degrees_of_freedom,
+    remove_total_momentum,
+    spares_momentum,
+)
 from swirlight.motion.kernels import Workspace, drift, kick
 from swirlight.motion.ledger import ABSORBED, OPENING, Ledger
 from swirlight.motion.load import Load
@@ -47,6 +52,8 @@ class Mover:
         self.timestep = float(timestep)
         self.momentum_conserved = remove_momentum and conserves_momentum(
             system, thermostat, self.light)
+        # Removed in lit kinds too where light pushes: twins begin alike.
+        self._stilled = remove_momentum and spares_momentum(thermostat)
         self.freedom = degrees_of_freedom(system, self.momentum_conserved)
         self.ledger = Ledger()
         self.load = Load(system.bodies)
@@ -60,7 +67,7 @@ class Mover:
         """Find what acts at a state, without motion.
 
         time : since the stage began. [ps] At 0 the total momentum is removed from the state
-            where the stage conserves it.
+            where the thermostat, if any, leaves it alone.
         Raises ValueError for arrays of a wrong shape, or angular momentum that a body cannot
         have.
         """
@@ -70,7 +77,7 @@ class Mover:
             self._offset = 0.0  # a whole number of steps: the time an unbroken run would have
         self._block = None
         _check(self.system, state)
-        if time == 0 and self.momentum_conserved:
+        if time == 0 and self._stilled:
             remove_total_momentum(self.system, state)
         self._evaluate(state, energies)
         if energies and np.isnan(self.ledger.opening_energy):

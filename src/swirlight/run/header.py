@@ -43,7 +43,7 @@ def _stages(system, legs):
     found = {}
     for index, leg in enumerate(legs):
         thermostat = make_thermostat(system, **leg.thermostat)
-        kept = conserves_momentum(system, thermostat, leg.pulses or leg.bias or None)
+        kept = conserves_momentum(system, thermostat, leg)
         freedom = degrees_of_freedom(system, kept)
         found[f"{index}-{leg.name}"] = {
             "steps": leg.steps,
