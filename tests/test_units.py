@@ -192,3 +192,13 @@ def test_text_reads_back_as_the_same_float(kind, value):
 def test_grams_per_cubic_centimetre_to_the_last_digit():
     """In binary 0.78 g/cm³ becomes 779.9999999999999 kg/m³; here it is 780."""
     assert units.parse("0.78 g/cm^3", "density") == units.parse("780 kg/m^3", "density")
+
+
+@pytest.mark.parametrize("text, kind, meant", [
+    ("33 cm-1", "carrier", "33 cm^-1"),
+    ("0.777 kg/m3", "density", "0.777 kg/m^3"),
+])
+def test_powers_without_their_sign_are_understood_but_not_taken(text, kind, meant):
+    with pytest.raises(ValueError, match="did you mean") as caught:
+        units.parse(text, kind)
+    assert f'"{meant}"' in str(caught.value) and units.parse(meant, kind) > 0

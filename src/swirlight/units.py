@@ -191,7 +191,7 @@ def _split(text, pattern):
         raise ValueError(f"is longer than {LONGEST} characters")
     text = text.strip().replace("μ", "µ").replace("\N{ANGSTROM SIGN}", "Å")
     if not re.match(pattern, text):
-        raise ValueError(_misfit(text, 3 if pattern is VECTOR_PATTERN else 1))
+        raise ValueError(_misfit(text, pattern))
     numbers = []
     rest = text
     while found := re.match(rf"{_NUMBER}(?= |/)", rest):
@@ -204,8 +204,9 @@ def _split(text, pattern):
     return numbers, rest
 
 
-def _misfit(text, count):
-    """What keeps this text from being a quantity (or a vector, with count 3)."""
+def _misfit(text, pattern):
+    """What keeps this text from being a quantity, or a vector."""
+    count = 3 if pattern is VECTOR_PATTERN else 1
     if "," in text:
         return "has a comma: write a decimal point, and spaces between numbers"
     numbers = re.match(rf"(?:{_NUMBER}(?: +|$))*", text).group().split()
@@ -219,6 +220,9 @@ def _misfit(text, count):
         return f"has {len(numbers)} numbers instead of three"
     if count == 1 and re.fullmatch(rf"{_NUMBER}{_UNIT}", text):
         return "needs a space between number and unit"
+    carets = re.sub(r"([A-Za-zµÅ°])([+-]?[1-9])(?![0-9])", r"\1^\2", text)  # the habit of "cm-1"
+    if carets != text and re.match(pattern, carets):
+        return f'writes a power without its sign (did you mean "{carets}"?)'
     return "is no number with a unit (units are symbols with one-digit powers, joined by a " \
         "space, * or /, six at most)"
 

@@ -69,7 +69,8 @@ def run(arguments):
     except InputError as error:
         return _fail(error, 2)
     except StopRequested as stop:
-        return _fail(f"stopped at step {stop.step}; everything is saved", 128 + stop.signal)
+        return _fail("stopped; everything is saved, and `swirlight resume` goes on",
+                     128 + stop.signal)
     except SwirlightError as error:
         return _fail(error, 1)
     except OSError as error:

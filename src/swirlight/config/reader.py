@@ -65,7 +65,7 @@ class Document:
 
     def message(self, path, text):
         """One line, ``FILE:LINE:COL: key: text``."""
-        key = path_text(path)
+        key, text = path_text(path), printable(text, 10_000)
         return f"{self.place(path)}: {key}: {text}" if key else f"{self.place(path)}: {text}"
 
     def override(self, assignment):
@@ -98,8 +98,10 @@ class Document:
         for depth, step in enumerate(path):
             wanted = list if isinstance(step, int) else dict
             if not isinstance(here, wanted):
+                name = path_text(path[:depth]) or "the file"
                 kind = "list" if wanted is list else "section"
-                raise ConfigError(f"{origin}: {path_text(path[:depth]) or 'the file'} is no {kind}")
+                hint = f"; it is a list: {name}[0].{step}" if isinstance(here, list) else ""
+                raise ConfigError(f"{origin}: {name} is no {kind}{hint}")
             if wanted is list and step >= len(here):
                 raise ConfigError(f"{origin}: {path_text(path[:depth])} has {len(here)} "
                                   f"entr{'y' if len(here) == 1 else 'ies'}, counted from 0")

@@ -3,11 +3,11 @@
 import pathlib
 
 from swirlight.errors import InputError
-from swirlight.run.response import verdict
+from swirlight.run.response import DETECTED, verdict
 from swirlight.store.run import read_json
 
 NAMES = {
-    "light_impulse": "light impulse",
+    "light_impulse": "angular impulse",
     "angular_momentum": "angular momentum",
     "alignment": "alignment ⟨P2⟩",
 }
@@ -34,12 +34,16 @@ def answer(folder):
     return "\n".join(lines)
 
 
-def _heating(absorbed_over_heat_capacity, own_temperature=None):
-    absorbed = f"{absorbed_over_heat_capacity['value']:.3g} K (absorbed energy over heat capacity)"
-    if own_temperature is None:
-        return absorbed
-    return (f"{own_temperature['value']:+.2f} ± {_number(own_temperature['error'])} K (own"
-            f" thermometer, lit less dark), {absorbed}")
+def _heating(absorbed_over_heat_capacity, work_over_heat_capacity, own_temperature=None):
+    parts = [f"{work_over_heat_capacity['value']:+.3g} K (mechanical work of the light over heat"
+             " capacity)"]
+    if own_temperature is not None:
+        parts.append(f"{own_temperature['value']:+.2g} ± {_number(own_temperature['error'])} K (the"
+                     " bodies' own thermometer, lit less dark)")
+    absorbed = absorbed_over_heat_capacity["value"]
+    parts.append(f"{absorbed:.3g} K more once the absorbed energy, kept aside, has become heat"
+                 if absorbed else "no electronic absorption in this model")
+    return "; ".join(parts)
 
 
 def _response(response):
@@ -58,11 +62,22 @@ def _response(response):
                     f" {_number(f['error'])}{unit.replace('hbar', 'ħ')}"
                     f"  ({_p(f['p'])}): {verdict(f)}"
                 )
-    spin = response["angular_momentum"]["odd"]
-    lines.append("Does the pulse turn these molecules? The turning it delivers (light impulse):"
-                 f" {verdict(impulse)}; the turning they have then (angular momentum):"
-                 f" {verdict(spin)}.")
-    return lines
+    return [*lines, _conclusion(impulse, response["angular_momentum"]["odd"])]
+
+
+def _conclusion(impulse, spin):
+    """Does the pulse turn the molecules? One sentence from two odd parts."""
+    starts = impulse["starts"]
+    if verdict(impulse) != DETECTED:
+        head = f"not settled with {starts} start" + "s" * (starts != 1)
+    elif verdict(spin) != DETECTED:
+        head = "the pulse delivers turning, but it is lost in the molecules' motion"
+    else:
+        head = "yes, the pulse turns these molecules"
+    delivered, left = (f"{f['value']:+.2e} ± {_number(f['error'])} ħ" for f in (impulse, spin))
+    return (f"Answer: {head}. By then the light has delivered {delivered} a body along the beam,"
+            f" and {left} of it is in their motion (odd in helicity, from twins that share their"
+            " noise; a laboratory has no twins and needs more repeats).")
 
 
 def _averages(averages):
@@ -77,4 +92,4 @@ def _p(value):
 
 
 def _number(value):
-    return "unknown" if value is None or value != value else f"{value:.1e}"
+    return "unknown" if value is None or value != value else f"{value:.2g}"

@@ -60,7 +60,8 @@ def status_text(status):
     if status["seconds_left"] is not None:
         lines.append(f"about {status['seconds_left']:.0f} s left")
     for name, p in status["under_way"].items():
-        lines.append(f"  {name}: step {p['step']} of {p['steps']}, {p['rate']:.0f} steps/s")
+        rate = f", {p['rate']:.0f} steps/s" if status["state"] == "running" else ""
+        lines.append(f"  {name}: step {p['step']} of {p['steps']}{rate}")
     for name, reason in status["failed"].items():
         lines.append(f"  {name}: failed: {reason}")
     if status["state"] in ("interrupted", "failed"):

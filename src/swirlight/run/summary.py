@@ -123,7 +123,7 @@ def _ledgers(run, exposures, bodies):
 
 
 def _heating(run, work):
-    """How warm it gets, twice: the run's own thermometer, and the absorbed energy over C_V."""
+    """How warm it gets: the run's own thermometer, and what the light gave over C_V."""
     rows = collect(run, work.exposures, lambda t: float(np.asarray(t["temperature"])[-1]))
     lit = [kind for kind in ("plus", "minus") if kind in rows]
     if not lit or not len(rows[lit[0]]):
@@ -131,7 +131,10 @@ def _heating(run, work):
     absorbed = collect(run, work.exposures, lambda t: float(t["absorbed_energy"][-1]))
     energy = np.mean([absorbed[k] for k in lit]) * units.KJ_PER_MOL
     capacity, known = _heat_capacity(work.system)
+    done = collect(run, work.exposures, lambda t: float(t["light_work"][-1]))
+    mechanical = np.mean([done[k] for k in lit]) * units.KJ_PER_MOL
     found = {
+        "work_over_heat_capacity": {"value": float(mechanical / capacity), "unit": "K"},
         "absorbed_over_heat_capacity": {
             "value": float(energy / capacity), "unit": "K",
             "heat_capacity": "of the species' files" if known else

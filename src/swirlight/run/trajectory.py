@@ -154,6 +154,7 @@ class Trajectory:
             number = self._stop.requested()
             if number:
                 self._checkpoint(state, index, step, mover)
+                self._tell(recorder, index, step, 0.0)
                 raise StopRequested(state.step, number)
             now = time.monotonic()
             if step == done + 1:  # it may have compiled, which is no measure of pace
