@@ -29,7 +29,7 @@ def answer(folder):
     lines += _response(summary["response"]) or _averages(summary["averages"])
     heating = summary["heating"]
     if heating:
-        lines.append("heating by the end: " + _heating(**heating))
+        lines.append("heating: " + _heating(**heating))
     lines += [f"warning: {text}" for code, text in summary["warnings"] if code == LATE]
     return "\n".join(lines)
 
@@ -71,7 +71,8 @@ def _conclusion(impulse, spin):
     if verdict(impulse) != DETECTED:
         head = f"not settled with {starts} start" + "s" * (starts != 1)
     elif verdict(spin) != DETECTED:
-        head = "the pulse delivers turning, but it is lost in the molecules' motion"
+        head = ("the pulse delivers turning, but at that time it cannot be told from noise in the"
+                " molecules' motion")
     else:
         head = "yes, the pulse turns these molecules"
     delivered, left = (f"{f['value']:+.2e} ± {_number(f['error'])} ħ" for f in (impulse, spin))

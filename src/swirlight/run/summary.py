@@ -124,7 +124,12 @@ def _ledgers(run, exposures, bodies):
 
 def _heating(run, work):
     """How warm it gets: the run's own thermometer, and what the light gave over C_V."""
-    rows = collect(run, work.exposures, lambda t: float(np.asarray(t["temperature"])[-1]))
+    def after_light(trajectory):
+        kelvin = trajectory["temperature"]
+        first = int(np.searchsorted(kelvin.times, end_of_light(work.pulses)))
+        return float(np.mean(kelvin[min(first, len(kelvin) - 1):]))
+
+    rows = collect(run, work.exposures, after_light)
     lit = [kind for kind in ("plus", "minus") if kind in rows]
     if not lit or not len(rows[lit[0]]):
         return {}
@@ -144,7 +149,7 @@ def _heating(run, work):
     if "dark" in rows:  # without the dark twin there is nothing to take it from
         value, error, _ = mean_and_error(np.mean([rows[k] for k in lit], axis=0) - rows["dark"])
         found["own_temperature"] = {"value": float(value), "error": float(error), "unit": "K",
-                                    "of": "lit less dark, at the end of the run"}
+                                    "of": "lit less dark, mean from the end of the light on"}
     return found
 
 
