@@ -15,7 +15,10 @@ Bodies start from a lattice with overlaps removed.
 
 import argparse
 import json
+import pathlib
+import platform
 import time
+from importlib.metadata import version
 
 import numpy as np
 from scipy.spatial import cKDTree
@@ -128,7 +131,7 @@ def steps_per_second(system, state, threads, steps=200):
     return steps / (time.perf_counter() - start)
 
 
-def measure(name, bodies, threads, precision, cutoff, steps):
+def measure(name, bodies, threads, precision, cutoff):
     """One row for each number of threads."""
     system, state = prepare(name, bodies, precision, cutoff)
     pairs = useful_pairs(system, state)
@@ -137,26 +140,46 @@ def measure(name, bodies, threads, precision, cutoff, steps):
         row = dict(system=name, bodies=bodies, threads=count, precision=precision,
                    cutoff_nm=cutoff, ms_per_force_call=call, useful_pairs=pairs,
                    ns_per_useful_pair=1e6 * call / pairs, ms_list=inner, ms_cells=outer)
-        if steps:
-            row["steps_per_second"] = steps_per_second(system, state, count)
+        row["steps_per_second"] = steps_per_second(system, state, count)
         yield row
 
 
 HEAD = "system        bodies threads precision  ms/call  ns/pair  list ms  cells ms  steps/s"
 
 
+def machine():
+    """What was measured on, with which versions; two lines."""
+    try:
+        found = [x for x in pathlib.Path("/proc/cpuinfo").read_text().splitlines()
+                 if x.startswith("model name")]
+        processor = found[0].partition(":")[2].strip()
+    except (OSError, IndexError):
+        processor = platform.processor() or platform.machine()
+    vectors = "512-bit vectors" if "avx512f" in cpu_features() else "narrower vectors"
+    versions = ", ".join(f"{name} {version(name)}" for name in
+                         ("swirlight", "numba", "llvmlite", "numpy", "scipy"))
+    return (f"{processor}, {numba.config.NUMBA_NUM_THREADS} cores, {vectors}\n"
+            f"Python {platform.python_version()}, {versions}")
+
+
+def cpu_features():
+    """Names of the processor's features, as the compiler knows them."""
+    from llvmlite import binding
+
+    return [name for name, there in binding.get_host_cpu_features().items() if there]
+
+
 def line(row):
-    steps = row.get("steps_per_second")
     return (f"{row['system']:<13} {row['bodies']:>6} {row['threads']:>7} {row['precision']:<9}"
             f" {row['ms_per_force_call']:>8.3f} {row['ns_per_useful_pair']:>8.2f}"
             f" {row['ms_list']:>8.3f} {row['ms_cells']:>9.2f}"
-            f" {steps and f'{steps:8.0f}' or '       -'}")
+            f" {row['steps_per_second']:>8.0f}")
 
 
 def main():
     parser = argparse.ArgumentParser(description=__doc__,
                                      formatter_class=argparse.RawDescriptionHelpFormatter)
-    parser.add_argument("--json", action="store_true", help="rows as JSON, without steps")
+    parser.add_argument("--json", action="store_true", help="rows as JSON")
     parser.add_argument("--system", choices=SYSTEMS)
     parser.add_argument("--bodies", type=int)
     parser.add_argument("--threads", type=int, help="left out: one, then all")
@@ -171,9 +194,9 @@ def main():
         table = ((wanted.system, wanted.bodies or 4000),)
     rows = []
     if not wanted.json:
-        print(HEAD)
+        print(machine(), HEAD, sep="\n")
     for name, bodies in table:
-        for row in measure(name, bodies, threads, wanted.precision, cutoff, not wanted.json):
+        for row in measure(name, bodies, threads, wanted.precision, cutoff):
             rows.append(row)
             if not wanted.json:
                 print(line(row), flush=True)
