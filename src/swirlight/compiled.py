@@ -15,6 +15,7 @@ import warnings
 # NaN and infinity stay visible (no nnan, ninf): a trajectory that blows up must be seen.
 FAST = {"reassoc", "nsz", "contract", "arcp", "afn"}
 KERNEL_ROOMS = ("light", "forces", "motion", "observe")
+KERNEL_FILES = ("compiled.py", "rotation.py")  # outside of them
 # Parallel kernels split their work into this many parts whatever the number of threads,
 # and add the parts in order: the same bits on any machine.
 CHUNKS = 32
@@ -23,8 +24,8 @@ CHUNKS = 32
 def _source_hash():
     root = pathlib.Path(__file__).parent
     digest = hashlib.sha256()
-    kernels = sorted(p for room in KERNEL_ROOMS for p in (root / room).rglob("*.py"))
-    for path in [pathlib.Path(__file__), *kernels]:
+    rooms = sorted(p for room in KERNEL_ROOMS for p in (root / room).rglob("*.py"))
+    for path in [*(root / name for name in KERNEL_FILES), *rooms]:
         digest.update(path.name.encode() + b"\0" + path.read_bytes())
     return digest.hexdigest()[:12]
 

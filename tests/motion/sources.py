@@ -4,7 +4,7 @@ from types import SimpleNamespace
 
 import numpy as np
 
-from swirlight.motion.rotation import rotation_matrix, to_laboratory
+from swirlight.rotation import rotation_matrix, to_laboratory
 
 
 class Springs:

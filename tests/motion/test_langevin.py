@@ -8,9 +8,9 @@ from swirlight.errors import InputError
 from swirlight.motion.energy import kinetic_energies
 from swirlight.motion.kernels import Workspace, mix_with_bath
 from swirlight.motion.ledger import Ledger
-from swirlight.motion.rotation import rotation_matrix, to_body
 from swirlight.motion.step import Mover
 from swirlight.motion.thermostats import make_thermostat
+from swirlight.rotation import rotation_matrix, to_body
 from swirlight.units import BOLTZMANN
 
 from .bodies import body, system, thermal

@@ -4,11 +4,10 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
-from swirlight import units
+from swirlight import rotation, units
 from swirlight.light.envelope import Gaussian
 from swirlight.light.light import Light
 from swirlight.light.pulse import Bias, Pulse, amplitude_of_intensity
-from swirlight.motion import rotation
 from swirlight.motion.energy import kinetic_energies
 from swirlight.motion.ledger import Ledger
 from swirlight.motion.step import Mover

@@ -11,8 +11,8 @@ from swirlight.light.exposure import mirrored
 from swirlight.light.light import Light
 from swirlight.light.pulse import Bias, Pulse
 from swirlight.motion.draw import draw_motion
-from swirlight.motion.rotation import rotation_matrix
 from swirlight.motion.step import Mover
+from swirlight.rotation import rotation_matrix
 from swirlight.species.body import OpticalResponse
 from swirlight.species.library import load_species
 from swirlight.state import State

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
-from swirlight.motion import rotation
+from swirlight import rotation
 
 RANDOM = np.random.default_rng(7)
 QUATERNIONS = rotation.normalised(RANDOM.standard_normal((50, 4)))

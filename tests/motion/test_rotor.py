@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
-from swirlight.motion import rotation
+from swirlight import rotation
 from swirlight.motion.kernels import drift
 from swirlight.motion.rotor import ASYMMETRIC, ATOM, SYMMETRIC, rotor_kinds
 

@@ -8,9 +8,9 @@ from swirlight.errors import RunError
 from swirlight.motion.energy import angular_velocity, kinetic_energies, kinetic_temperature
 from swirlight.motion.kernels import Workspace, kick
 from swirlight.motion.ledger import Ledger
-from swirlight.motion.rotation import rotation_matrix, to_body
 from swirlight.motion.step import Mover
 from swirlight.motion.thermostats import make_thermostat
+from swirlight.rotation import rotation_matrix, to_body
 from swirlight.units import BOLTZMANN
 
 from .bodies import body, still, system, thermal

@@ -7,10 +7,10 @@ from scipy import constants
 from swirlight.light.light import Light
 from swirlight.light.pulse import Bias
 from swirlight.motion.energy import kinetic_energies
-from swirlight.motion.rotation import from_vector
 from swirlight.motion.step import Mover
 from swirlight.motion.thermostats import make_thermostat
 from swirlight.observe.totals import TOTALS, present, sample
+from swirlight.rotation import from_vector
 from swirlight.units import BOLTZMANN
 from tests.motion.bodies import body, response, still, system, thermal
 from tests.motion.sources import Springs

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from scipy.special import ellipj
 
-from swirlight.motion import rotation
+from swirlight import rotation
 from swirlight.motion.energy import angular_velocity
 from swirlight.motion.kernels import drift
 from swirlight.motion.rotor import rotor_kinds

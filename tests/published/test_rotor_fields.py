@@ -4,10 +4,10 @@ import numpy as np
 import pytest
 from scipy.special import ellipk
 
+from swirlight import rotation
 from swirlight.light.envelope import Gaussian, Rectangle
 from swirlight.light.light import Light
 from swirlight.light.pulse import Bias, Pulse
-from swirlight.motion import rotation
 from swirlight.motion.step import Mover
 from tests.motion.bodies import body, response, still, system
 

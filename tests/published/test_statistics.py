@@ -6,10 +6,10 @@ Seeds are fixed; tolerances are 4 standard errors, from the known or sampled var
 import numpy as np
 import pytest
 
+from swirlight import rotation
 from swirlight.light.envelope import Rectangle
 from swirlight.light.light import Light
 from swirlight.light.pulse import Bias, Pulse
-from swirlight.motion import rotation
 from swirlight.motion.draw import draw_motion, draw_orientations, draw_velocities
 from swirlight.motion.energy import kinetic_energies, kinetic_temperature
 from swirlight.motion.freedom import degrees_of_freedom

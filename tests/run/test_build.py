@@ -5,7 +5,7 @@ import pytest
 
 import swirlight as sw
 from swirlight.errors import InputError
-from swirlight.motion.rotation import to_body
+from swirlight.rotation import to_body
 from swirlight.store.start import load_state
 from tests.run.small import write_config
 

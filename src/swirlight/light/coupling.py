@@ -20,17 +20,13 @@ without branches, so they vectorise; sums run in a fixed order on one thread. Re
 """
 
 from swirlight.compiled import kernel
+from swirlight.rotation import matrix_entries
 
 
 @kernel
 def _rotation(q):
     """The nine entries of R (body to laboratory), row by row, of one unit quaternion."""
-    w, x, y, z = q[0], q[1], q[2], q[3]
-    return (
-        1.0 - 2.0 * (y * y + z * z), 2.0 * (x * y - w * z), 2.0 * (x * z + w * y),
-        2.0 * (x * y + w * z), 1.0 - 2.0 * (x * x + z * z), 2.0 * (y * z - w * x),
-        2.0 * (x * z - w * y), 2.0 * (y * z + w * x), 1.0 - 2.0 * (x * x + y * y),
-    )  # fmt: skip
+    return matrix_entries(q[0], q[1], q[2], q[3])
 
 
 @kernel(fast=True)

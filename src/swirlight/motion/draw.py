@@ -8,7 +8,7 @@ equipartition). Linear bodies have none about their axis, atoms none at all.
 import numpy as np
 
 from swirlight.motion.freedom import remove_total_momentum
-from swirlight.motion.rotation import normalised, to_laboratory
+from swirlight.rotation import normalised, to_laboratory
 from swirlight.units import BOLTZMANN
 
 

@@ -23,8 +23,8 @@ from swirlight.motion.ledger import (
     LIGHT_WORK,
     PAIR,
 )
-from swirlight.motion.rotation import matrix_entries
 from swirlight.motion.rotor import turn_freely
+from swirlight.rotation import matrix_entries
 
 PARALLEL_FROM = 1500  # bodies
 NONE = np.zeros((0, 3))  # a source that is not there

@@ -22,8 +22,8 @@ from swirlight.motion.freedom import (
 from swirlight.motion.kernels import Workspace, drift, kick
 from swirlight.motion.ledger import ABSORBED, OPENING, Ledger
 from swirlight.motion.load import Load
-from swirlight.motion.rotation import to_body
 from swirlight.motion.rotor import rotor_kinds
+from swirlight.rotation import to_body
 from swirlight.units import BOLTZMANN
 
 BLOCK = 256  # steps whose fields are calculated together

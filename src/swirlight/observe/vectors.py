@@ -11,7 +11,7 @@ import numpy as np
 
 from swirlight import units
 from swirlight.motion.energy import angular_velocity
-from swirlight.motion.rotation import rotation_matrix, to_laboratory
+from swirlight.rotation import rotation_matrix, to_laboratory
 
 
 @dataclass(frozen=True)

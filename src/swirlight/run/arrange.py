@@ -9,7 +9,7 @@ at overlap are large beyond all meaning.
 import numpy as np
 
 from swirlight.errors import RunError
-from swirlight.motion.rotation import from_vector, multiply, normalised
+from swirlight.rotation import from_vector, multiply, normalised
 from swirlight.units import BOLTZMANN
 
 _FACE_CENTRED = np.array([[0, 0, 0], [0, 0.5, 0.5], [0.5, 0, 0.5], [0.5, 0.5, 0]]) + 0.25

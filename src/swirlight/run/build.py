@@ -10,8 +10,8 @@ from swirlight.forces.field import ForceField
 from swirlight.light.build import bias_from_config, pulses_from_config
 from swirlight.light.light import Light
 from swirlight.motion.draw import draw_motion, draw_orientations
-from swirlight.motion.rotation import to_body, to_laboratory
 from swirlight.motion.step import Mover, stray_spins
+from swirlight.rotation import to_body, to_laboratory
 from swirlight.run.arrange import lattice_positions, remove_overlaps
 from swirlight.run.sample import box_edges, build_system
 from swirlight.state import State
