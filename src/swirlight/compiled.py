@@ -15,7 +15,7 @@ import warnings
 # NaN and infinity stay visible (no nnan, ninf): a trajectory that blows up must be seen.
 FAST = {"reassoc", "nsz", "contract", "arcp", "afn"}
 KERNEL_ROOMS = ("light", "forces", "motion", "observe")
-KERNEL_FILES = ("compiled.py", "rotation.py")  # outside of them
+KERNEL_FILES = ("compiled.py", "rotation_kernels.py")  # outside of them
 # Parallel kernels split their work into this many parts whatever the number of threads,
 # and add the parts in order: the same bits on any machine.
 CHUNKS = 32

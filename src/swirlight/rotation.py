@@ -1,16 +1,11 @@
-"""Rotations by unit quaternions, in two forms: scalars inside kernels, arrays outside.
+"""Rotations of arrays by unit quaternions.
 
 A quaternion is (w, x, y, z), scalar first, and maps body to laboratory: v_lab = q v_body q*.
-The kernel forms take and return plain scalars, so that they vanish into the loop around them.
+Nothing is compiled here: whatever reads files needs it too. `rotation_kernels` holds the
+forms for compiled loops.
 """
 
-import math
-
 import numpy as np
-
-from swirlight.compiled import kernel
-
-# --- arrays -----------------------------------------------------------------------------
 
 
 def multiply(a, b):
@@ -58,32 +53,6 @@ def normalised(q):
     return q / np.linalg.norm(q, axis=-1, keepdims=True)
 
 
-# --- scalars, inside kernels ------------------------------------------------------------
-
-
-@kernel
-def matrix_entries(w, x, y, z):
-    """The nine entries of R, row by row."""
-    ww, xx, yy, zz = w * w, x * x, y * y, z * z
-    return (
-        ww + xx - yy - zz, 2.0 * (x * y - w * z), 2.0 * (x * z + w * y),
-        2.0 * (x * y + w * z), ww - xx + yy - zz, 2.0 * (y * z - w * x),
-        2.0 * (x * z - w * y), 2.0 * (y * z + w * x), ww - xx - yy + zz,
-    )  # fmt: skip
-
-
-@kernel
-def cosine_and_sinc(h2):
-    """cos h and sin h / h of h = √h2; Taylor sums to rounding below h = 1/4.
-
-    In a liquid a body turns by a few hundredths of a radian a step, and a sum of a dozen
-    terms costs a fraction of the two library calls.
-    """
-    if h2 < 0.0625:
-        c = 1.0 + h2 * (-1 / 2 + h2 * (1 / 24 + h2 * (-1 / 720 + h2 * (1 / 40320 + h2 * (
-            -1 / 3628800 + h2 / 479001600)))))
-        s = 1.0 + h2 * (-1 / 6 + h2 * (1 / 120 + h2 * (-1 / 5040 + h2 * (1 / 362880 + h2 * (
-            -1 / 39916800)))))
-        return c, s
-    h = math.sqrt(h2)
-    return math.cos(h), math.sin(h) / h
+def body_axes(q):
+    """(..., 3, 3) body axes in the laboratory, row k = axis k: the columns of R."""
+    return rotation_matrix(q).swapaxes(-1, -2)

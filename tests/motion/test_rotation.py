@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
-from swirlight import rotation
+from swirlight import rotation, rotation_kernels
 
 RANDOM = np.random.default_rng(7)
 QUATERNIONS = rotation.normalised(RANDOM.standard_normal((50, 4)))
@@ -39,12 +39,12 @@ def test_rotation_vectors():
 
 def test_kernel_form_equals_array_form():
     for q in QUATERNIONS:
-        entries = np.reshape(rotation.matrix_entries(*q), (3, 3))
+        entries = np.reshape(rotation_kernels.matrix_entries(*q), (3, 3))
         assert np.allclose(entries, rotation.rotation_matrix(q), atol=1e-15)
 
 
 @pytest.mark.parametrize("h", [0.0, 1e-9, 1e-3, 0.1, 0.2499999, 0.25, 0.2500001, 1.0, 3.0, 40.0])
 def test_cosine_and_sinc_to_rounding(h):
-    c, s = rotation.cosine_and_sinc(h * h)
+    c, s = rotation_kernels.cosine_and_sinc(h * h)
     assert c == pytest.approx(math.cos(h), abs=3e-16 * max(1, h))
     assert s == pytest.approx(math.sin(h) / h if h else 1.0, abs=3e-16 * max(1, h))

@@ -10,8 +10,9 @@ import numpy as np
 import pytest
 
 from swirlight.errors import InputError, RunError
+from swirlight.rotation import body_axes
 from swirlight.store.run import Exposure, open_run
-from swirlight.store.trajectory import Trajectory, body_axes
+from swirlight.store.trajectory import Trajectory
 from tests.store import engine
 
 KEYS = [
@@ -223,3 +224,8 @@ def test_reading_needs_neither_numba_nor_matplotlib():
             " & set(sys.modules))")
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout == "set()\n"
+
+
+def test_derived_axes_have_the_type_they_announce(finished):
+    axis = Trajectory(finished).axis_z
+    assert axis[:2].dtype == axis.dtype

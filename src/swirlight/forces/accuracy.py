@@ -18,6 +18,7 @@ import scipy.fft
 from scipy.special import erfc, erfcinv
 
 from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli
+from swirlight.rotation import rotation_matrix
 from swirlight.units import COULOMB
 
 SAFETY = 0.5  # of the tolerance is what real space, and what reciprocal space, may use
@@ -39,7 +40,7 @@ def typical_force(system, box):
     density = system.bodies / np.prod(box)
     lattice = (np.sqrt(2.0) / density) ** (1.0 / 3.0)
     draws = np.random.default_rng(20).normal(size=(2, 64, 4))
-    turns = [_rotations(d / np.linalg.norm(d, axis=1, keepdims=True)) for d in draws]
+    turns = [rotation_matrix(d / np.linalg.norm(d, axis=1, keepdims=True)) for d in draws]
     share = np.array(system.counts) / system.bodies
     square = 0.0
     for (a, one), (b, two) in product(enumerate(system.species), repeat=2):
@@ -62,28 +63,17 @@ def _diameter(species):
     return float(np.max(sizes, where=species.epsilon > 0.0, initial=0.0))
 
 
-def _rotations(q):
-    w, x, y, z = q.T
-    return np.moveaxis(np.array([
-        [1 - 2 * (y * y + z * z), 2 * (x * y - w * z), 2 * (x * z + w * y)],
-        [2 * (x * y + w * z), 1 - 2 * (x * x + z * z), 2 * (y * z - w * x)],
-        [2 * (x * z - w * y), 2 * (y * z + w * x), 1 - 2 * (x * x + y * y)],
-    ]), -1, 0)
-
-
 def body_error(system, pair, own=0.0):
     """Rms force error of a body, from ⟨δf²⟩ between two unit charges and of one on itself."""
     square = (system.site_charge**2).sum() ** 2 * pair + (system.site_charge**4).sum() * own
     return COULOMB * np.sqrt(square / system.bodies)
 
 
-def cut_error(alpha, cutoff, box):
-    """⟨δf²⟩ of the real-space sum cut at `cutoff`: 4 exp(−2α²rc²)/(rc V). [1/nm⁴]"""
-    return 4.0 * np.exp(-2.0 * (alpha * cutoff) ** 2) / (cutoff * np.prod(box))
-
-
 def splitting(system, box):
-    """α that brings the real-space error to its share of the tolerance. [1/nm]"""
+    """α that brings the real-space error to its share of the tolerance. [1/nm]
+
+    The sum cut at rc errs by ⟨δf²⟩ = 4 exp(−2α²rc²)/(rc V) between two unit charges.
+    """
     rc = system.interactions.cutoff
     needed = (allowed_error(system, box) / body_error(system, 1.0)) ** 2
     return float(np.sqrt(max(0.5 * np.log(4.0 / (rc * np.prod(box) * needed)), 1.0)) / rc)

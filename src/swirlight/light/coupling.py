@@ -20,7 +20,7 @@ without branches, so they vectorise; sums run in a fixed order on one thread. Re
 """
 
 from swirlight.compiled import kernel
-from swirlight.rotation import matrix_entries
+from swirlight.rotation_kernels import matrix_entries
 
 
 @kernel

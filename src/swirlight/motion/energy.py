@@ -3,7 +3,7 @@
 import numpy as np
 
 from swirlight.compiled import kernel
-from swirlight.rotation import matrix_entries
+from swirlight.rotation_kernels import matrix_entries
 from swirlight.units import BOLTZMANN
 
 

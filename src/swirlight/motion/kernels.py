@@ -24,7 +24,7 @@ from swirlight.motion.ledger import (
     PAIR,
 )
 from swirlight.motion.rotor import turn_freely
-from swirlight.rotation import matrix_entries
+from swirlight.rotation_kernels import matrix_entries
 
 PARALLEL_FROM = 1500  # bodies
 NONE = np.zeros((0, 3))  # a source that is not there

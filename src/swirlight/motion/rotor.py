@@ -13,7 +13,7 @@ L is kept in the laboratory frame, where free rotation does not change one bit o
 import numpy as np
 
 from swirlight.compiled import kernel
-from swirlight.rotation import cosine_and_sinc, matrix_entries
+from swirlight.rotation_kernels import cosine_and_sinc, matrix_entries
 
 ATOM, SYMMETRIC, ASYMMETRIC = 0, 1, 2
 EQUAL_MOMENTS = 1e-9  # relative; nearer moments are one moment to more digits than anyone knows

@@ -12,6 +12,7 @@ import numpy as np
 from swirlight import units
 from swirlight.motion.energy import kinetic_energies, kinetic_temperature
 from swirlight.observe.vectors import permanent_dipole
+from swirlight.rotation import body_axes
 
 KJ = 1.0 / units.KJ_PER_MOL
 VOLTS = 1.0 / units.VOLT_PER_METRE
@@ -83,9 +84,7 @@ def total_dipole(now):
 
 def _cosines(now):
     """cos of body z with the beam, of all bodies that have an orientation."""
-    w, x, y, z = now.state.orientation[now.system.freedom > 0].T
-    axis = 2 * (x * z + w * y), 2 * (y * z - w * x), w * w - x * x - y * y + z * z
-    return np.tensordot(now.beam, np.stack(axis), 1)
+    return body_axes(now.state.orientation[now.system.freedom > 0])[:, 2] @ now.beam
 
 
 def alignment(now):

@@ -11,7 +11,7 @@ import numpy as np
 
 from swirlight import units
 from swirlight.motion.energy import angular_velocity
-from swirlight.rotation import rotation_matrix, to_laboratory
+from swirlight.rotation import body_axes, to_laboratory
 
 
 @dataclass(frozen=True)
@@ -85,7 +85,7 @@ VECTORS = {
         Vector("orientation", (4,), None, 1.0, lambda y, s, f: s.orientation.copy(),
                {"convention": "unit quaternion, scalar first, body to laboratory"}),
         Vector("axes", (3, 3), None, 1.0,
-               lambda y, s, f: rotation_matrix(s.orientation).swapaxes(1, 2).copy(),
+               lambda y, s, f: body_axes(s.orientation).copy(),
                {"convention": "row k is body axis k in the laboratory"}),
         Vector("dipole", (3,), "C m", 1.0 / units.COULOMB_METRE,
                lambda y, s, f: permanent_dipole(y, s.orientation),

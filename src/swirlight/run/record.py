@@ -3,6 +3,7 @@
 import numpy as np
 
 from swirlight.observe import totals, vectors
+from swirlight.rotation import body_axes
 from swirlight.run.spacing import WATCHED
 from swirlight.store.layout import Element
 
@@ -70,10 +71,7 @@ class Recorder:
             if self._watched is not None:
                 rows = self._watched
                 due["watched/angular_momentum"] = state.angular_momentum[rows]
-                w, x, y, z = state.orientation[rows].T
-                due["watched/axis_z"] = np.stack(
-                    [2 * (x * z + w * y), 2 * (y * z - w * x), w * w - x * x - y * y + z * z], 1
-                )
+                due["watched/axis_z"] = body_axes(state.orientation[rows])[:, 2]
         return due
 
 

@@ -18,10 +18,11 @@ import zipfile
 import numpy as np
 
 from swirlight.errors import InputError
+from swirlight.rotation import body_axes
 from swirlight.store.durable import make_folder, replacing
 from swirlight.store.layout import LABELS
 from swirlight.store.run import Run, open_run
-from swirlight.store.trajectory import Trajectory, body_axes
+from swirlight.store.trajectory import Trajectory
 
 BLOCK_BYTES = 16e6
 ANGSTROM = 10.0  # in 1 nm

@@ -6,6 +6,7 @@ import h5py
 import numpy as np
 
 from swirlight.errors import InputError
+from swirlight.rotation import body_axes
 from swirlight.store.layout import BODIES, OWN
 from swirlight.store.parts import Files, Parts
 from swirlight.store.series import Series
@@ -237,7 +238,7 @@ class _Axis:
     def read(self, frames, rest=()):
         bodies, component = (*rest, slice(None), slice(None))[:2]
         axes = body_axes(self._orientation[frames, bodies])
-        return axes[..., self._k, :][..., component]
+        return axes[..., self._k, :][..., component].astype(self.dtype, copy=False)
 
 
 class _AxisOfAxes:
@@ -259,18 +260,3 @@ class _Unwrapped:
         bodies, component = (*rest, slice(None), slice(None))[:2]
         key = (frames, bodies, component)
         return self._position[key] + self._image[key] * self._box[component]
-
-
-def body_axes(orientation):
-    """Body axes in the laboratory frame, (..., 3, 3), row k = axis k.
-
-    orientation : (..., 4) unit quaternions, scalar first, body to laboratory
-        (lab = q body q*), as everywhere in this package.
-    """
-    w, x, y, z = np.moveaxis(np.asarray(orientation), -1, 0)
-    rows = [
-        [1 - 2 * (y * y + z * z), 2 * (x * y + w * z), 2 * (x * z - w * y)],
-        [2 * (x * y - w * z), 1 - 2 * (x * x + z * z), 2 * (y * z + w * x)],
-        [2 * (x * z + w * y), 2 * (y * z - w * x), 1 - 2 * (x * x + y * y)],
-    ]
-    return np.stack([np.stack(row, axis=-1) for row in rows], axis=-2)

@@ -5,6 +5,7 @@ import math
 import numpy as np
 
 from swirlight.light.describe import end_of_light
+from swirlight.light.limits import which_field
 from swirlight.light.regime import beats
 from swirlight.run.plan.page import Notice, Row, Section, quantity
 
@@ -117,16 +118,10 @@ def trajectories(subject):
 
 def boundary(subject):
     """What the electrostatics make of an applied field."""
-    kind = subject.system.interactions.electrostatics
+    said = which_field(subject.system.interactions.electrostatics)
     field = subject.bias is not None or any(p.coupling == "resolved" for p in subject.pulses)
-    if not field or not np.any(subject.system.type_charge):
-        return
-    if kind == "reaction-field":
-        yield Notice("applied-field", "forces.electrostatics: with reaction-field the Maxwell"
-                     " field in the sample is (2ε_RF + 1)/(2ε_RF + ε(ω)) times the applied one")
-    elif kind == "damped-shifted":
-        yield Notice("applied-field", "forces.electrostatics: damped-shifted has no clean"
-                     " boundary: compare the response to an applied field with mesh-ewald")
+    if said and field and np.any(subject.system.type_charge):
+        yield Notice("applied-field", f"forces.electrostatics: {said}")
 
 
 def _product(starts, phases):
