@@ -17,6 +17,7 @@ class Interactions:
     tolerance : of the Ewald force, relative to its rms.
     splitting : Ewald α. [1/nm]
     mesh_order, mesh_spacing : of the mesh. [1], [nm]
+    mesh_every : steps from one calculation of the mesh part to the next.
     reaction_permittivity : ε_RF; inf means conducting.
     damping : of the damped shifted force. [1/nm]
     mixing : between different species.
@@ -31,6 +32,7 @@ class Interactions:
     splitting: float | None = None
     mesh_order: int | None = None
     mesh_spacing: float | None = None
+    mesh_every: int = 1
     reaction_permittivity: float = np.inf
     damping: float = 2.0
     mixing: str = "lorentz-berthelot"

@@ -23,7 +23,9 @@ TERMS = ("lennard_jones", "lennard_jones_tail", "coulomb_real", "coulomb_mesh", 
 class Forces:
     """What the bodies feel. The arrays are the field's own and overwritten by its next call.
 
-    force, torque : (N, 3), laboratory frame, torques about the centres.
+    force, torque : (N, 3), laboratory frame, torques about the centres; without the mesh part
+        where `Interactions.mesh_every` > 1.
+    mesh_force, mesh_torque : (N, 3) that part then, None otherwise or where it was left out.
     energy : Σ of `terms`, or None where energies were not asked for.
     terms : name -> energy, the names of TERMS. [u nm²/ps²]
     virial : W = −dU/dlnλ when the centres scale with the box and bodies keep their size, with
@@ -35,6 +37,8 @@ class Forces:
     energy: float | None = None
     terms: dict[str, float] | None = None
     virial: float | None = None
+    mesh_force: np.ndarray | None = None
+    mesh_torque: np.ndarray | None = None
 
 
 class ForceField:
@@ -58,6 +62,9 @@ class ForceField:
         self._lever = np.empty((int(system.site_start[-1]), 3))
         self._place, self._push = np.empty((2, len(self._charged), 3))
         self._force, self._torque = np.empty((2, system.bodies, 3))
+        # Where the wave vectors act has rows of its own if they do not act at every step.
+        apart = self.reciprocal is not None and system.interactions.mesh_every > 1
+        self._apart = np.empty((2, system.bodies, 3)) if apart else None
         self._freedom = system.freedom
         self._own = corrections.self_energy(system, self.law)
         self._inner = corrections.intramolecular_energy(system, self.law)
@@ -78,33 +85,41 @@ class ForceField:
                  and interactions.tolerance >= FLOAT_MESH_TOLERANCE)
         return MeshEwald(charge, box, alpha, order, mesh, np.float32 if small else np.float64)
 
-    def evaluate(self, position, orientation, box, energies=True):
+    def evaluate(self, position, orientation, box, energies=True, mesh=True):
         """Forces, torques and, if asked for, energies and virial of one configuration -> Forces.
 
         position : (N, 3), wrapped or not. [nm]
         orientation : (N, 4) unit quaternions, scalar first, body to laboratory.
         box : (3,) [nm]
+        mesh : False leaves the mesh part out, unless energies are asked for.
         Forces with and without energies may differ in their last bits.
         """
         force, torque = self._force, self._torque
         sums = self.pairs.evaluate(position, orientation, box, force, torque, energies)
-        waves, lever_work = None, 0.0
-        if self.reciprocal is not None:
+        parts, waves, lever_work = [(force, torque)], None, 0.0
+        if self.reciprocal is not None and (mesh or energies):
+            if self._apart is not None:
+                self._apart[:] = 0.0
+                parts.append(self._apart)
             sites.place_sites(self.system, position, orientation, self._lever)
             sites.choose_places(position, self._lever, self._charged, self._body, self._place)
             waves = self.reciprocal.evaluate(self._place, box, self._push, energies)
             lever_work = sites.add_to_bodies(self._push, self._lever, self._charged, self._body,
-                                             force, torque)
-        sites.restrict_torques(orientation, self._freedom, torque)
-        if self._drifts:
-            sites.remove_mean_force(self.system.mass, force)
-        if not energies:
-            return Forces(force, torque)
-        wave_energy, wave_virial = waves or (0.0, 0.0)
-        terms = self._terms(sums, wave_energy, box)
-        virial = (float(np.sum(sums.virial)) + wave_virial - lever_work
-                  + self._tail_virial / np.prod(box))
-        return Forces(force, torque, sum(terms.values()), terms, virial)
+                                             *parts[-1])
+        for part_force, part_torque in parts:
+            sites.restrict_torques(orientation, self._freedom, part_torque)
+            if self._drifts:
+                sites.remove_mean_force(self.system.mass, part_force)
+        found = Forces(force, torque)
+        if len(parts) > 1:
+            found.mesh_force, found.mesh_torque = parts[1]
+        if energies:
+            wave_energy, wave_virial = waves or (0.0, 0.0)
+            found.terms = self._terms(sums, wave_energy, box)
+            found.energy = sum(found.terms.values())
+            found.virial = (float(np.sum(sums.virial)) + wave_virial - lever_work
+                            + self._tail_virial / np.prod(box))
+        return found
 
     def _terms(self, sums, wave_energy, box):
         own, inner = self._own, self._inner
