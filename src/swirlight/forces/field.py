@@ -23,9 +23,9 @@ TERMS = ("lennard_jones", "lennard_jones_tail", "coulomb_real", "coulomb_mesh", 
 class Forces:
     """What the bodies feel. The arrays are the field's own and overwritten by its next call.
 
-    force, torque : (N, 3), laboratory frame, torques about the centres; without the mesh part
-        where `Interactions.mesh_every` > 1.
-    mesh_force, mesh_torque : (N, 3) that part then, None otherwise or where it was left out.
+    force, torque : (N, 3), laboratory frame, torques about the centres.
+    mesh_force, mesh_torque : (N, 3) what of it comes from the mesh, where
+        `Interactions.mesh_every` > 1 and the mesh part was not left out; else None.
     energy : Σ of `terms`, or None where energies were not asked for.
     terms : name -> energy, the names of TERMS. [u nm²/ps²]
     virial : W = −dU/dlnλ when the centres scale with the box and bodies keep their size, with
@@ -62,7 +62,7 @@ class ForceField:
         self._lever = np.empty((int(system.site_start[-1]), 3))
         self._place, self._push = np.empty((2, len(self._charged), 3))
         self._force, self._torque = np.empty((2, system.bodies, 3))
-        # Where the wave vectors act has rows of its own if they do not act at every step.
+        # The part of the wave vectors has rows of its own where it does not act at every step.
         apart = self.reciprocal is not None and system.interactions.mesh_every > 1
         self._apart = np.empty((2, system.bodies, 3)) if apart else None
         self._freedom = system.freedom
@@ -113,6 +113,8 @@ class ForceField:
         found = Forces(force, torque)
         if len(parts) > 1:
             found.mesh_force, found.mesh_torque = parts[1]
+            force += found.mesh_force
+            torque += found.mesh_torque
         if energies:
             wave_energy, wave_virial = waves or (0.0, 0.0)
             found.terms = self._terms(sums, wave_energy, box)
