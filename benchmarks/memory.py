@@ -1,0 +1,78 @@
+"""Peak memory of a large box, each electrostatics in a process of its own.
+
+    python memory.py start.npz electrostatics       what the process itself prints: JSON
+"""
+
+import json
+import pathlib
+import resource
+import subprocess
+import sys
+import tempfile
+
+import numpy as np
+from starts import liquid
+from steps import Trajectory
+from systems import CUTOFF, as_in_a_run
+
+from swirlight.state import State
+
+BODIES, SMALL, STEPS = 108000, 500, 30
+MESH_ARRAYS = 3.5  # charges, their transform, the potential, and half a mesh of coefficients
+HEAD = ("electrostatics", "empty process MB", "peak MB", "mesh MB", "kB/body without mesh")
+NOTE = f"""\
+{BODIES} water, {STEPS} steps, one of them with energies. Empty: after the same with {SMALL} bodies,
+kernels loaded. mesh: its points, {MESH_ARRAYS:g} times (charge density, transform, potential, and
+half of it for the coefficients), in the precision it has; splines of the charges count to the
+bodies."""
+
+
+def peak():
+    """The most memory this process has had. [bytes]"""
+    try:  # ru_maxrss of a process begins with what its parent had when it started it
+        lines = pathlib.Path("/proc/self/status").read_text().splitlines()
+        return 1024 * next(int(x.split()[1]) for x in lines if x.startswith("VmHWM"))
+    except (OSError, StopIteration):
+        unit = 1 if sys.platform == "darwin" else 1024
+        return unit * resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
+
+
+def run(state, electrostatics):
+    """Some steps of a state; bytes of the mesh arrays."""
+    system = as_in_a_run("water", len(state.position), electrostatics=electrostatics)
+    trajectory = Trajectory(system, state)
+    for _ in range(STEPS):
+        trajectory()
+    trajectory.mover.advance(trajectory.state)
+    mesh = trajectory.field.reciprocal
+    return 0 if mesh is None else float(MESH_ARRAYS * np.prod(mesh.mesh) * mesh.dtype.itemsize)
+
+
+def rows():
+    """Rows of the table, one for each electrostatics."""
+    with tempfile.TemporaryDirectory() as folder:
+        for bodies in (SMALL, BODIES):
+            state = liquid("water", bodies, CUTOFF)
+            np.savez(pathlib.Path(folder, f"{bodies}.npz"),
+                     **{name: getattr(state, name) for name in State.ARRAYS})
+        for method in ("mesh-ewald", "reaction-field"):
+            done = subprocess.run([sys.executable, __file__, folder, method], check=True,
+                                  capture_output=True, text=True)
+            empty, most, mesh = json.loads(done.stdout)
+            yield [method, f"{empty / 1e6:.0f}", f"{most / 1e6:.0f}", f"{mesh / 1e6:.0f}",
+                   f"{(most - empty - mesh) / BODIES / 1e3:.2f}"]
+
+
+def main(folder, method):
+    def start(bodies):
+        with np.load(pathlib.Path(folder, f"{bodies}.npz")) as arrays:
+            return State(**arrays)
+
+    run(start(SMALL), method)
+    empty = peak()
+    mesh = run(start(BODIES), method)
+    print(json.dumps([empty, peak(), mesh]))
+
+
+if __name__ == "__main__":
+    main(*sys.argv[1:])
