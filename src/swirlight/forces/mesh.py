@@ -5,9 +5,9 @@ Model   Smooth particle-mesh Ewald: Essmann, Perera, Berkowitz, Darden, Lee & Pe
         gradient of the interpolated energy.
 Units   nm, ps, u, e; energy u nm²/ps².
 Layout  a spline takes a row of WIDTH numbers, zeros behind its p weights, and the mesh has WIDTH
-        further points along z: one row is one vector operation and never wraps. The weights
-        are polynomials in the place inside a cell, all of a row evaluated together.
-        Charges are sorted by planes of constant x, and a plane (when spreading) or a charge
+        further points along y and z: one row is one vector operation and never wraps. The
+        weights are polynomials in the place inside a cell, all of a row evaluated together.
+Bits    charges are sorted by planes of constant x, and a plane (when spreading) or a charge
         (when gathering) is written by one thread in fixed order: any number of threads gives
         the same bits.
 """
@@ -16,141 +16,157 @@ import numpy as np
 import scipy.fft
 
 from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.kernels.rows import eight_lanes, unaliased
+from swirlight.forces.kernels.rows import distinct, filled, fused, put_row, row_at, total
 from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli, spline_table
 from swirlight.units import COULOMB
 
 
 @kernel
-def _sort(place, box, mesh, cell, inside, start, rank):
-    """Mesh cell and place inside it of every charge; rank lists them by x, start[x] is the first.
+def _cell(place, edge, points):
+    """Mesh cell along one axis, and the place inside it, 0 to 1."""
+    u = place / edge
+    u = (u - np.floor(u)) * points
+    n = int(u)
+    # u − floor(u) may round to 1, and a place that is no number has no cell.
+    return (n if 0 <= n < points else 0), u - n
 
-    The lists are stable: charges of one plane keep their order.
-    """
-    start[:] = 0
-    for m in range(place.shape[0]):
-        for a in range(3):
-            u = place[m, a] / box[a]
-            u = (u - np.floor(u)) * mesh[a]
-            n = int(u)
-            inside[m, a] = u - n
-            # u − floor(u) may round to 1, and a place that is no number has no cell.
-            cell[m, a] = n if 0 <= n < mesh[a] else 0
-        start[cell[m, 0]] += 1
-    for x in range(mesh[0]):
-        start[x + 1] += start[x]
-    for m in range(place.shape[0] - 1, -1, -1):
-        x = cell[m, 0]
-        start[x] -= 1
-        rank[start[x]] = m
+
+@kernel
+def _count(first, last, place, box, mesh, count):
+    """How many of some charges each plane of constant x has."""
+    count[:] = 0
+    for m in range(first, last):
+        count[_cell(place[m, 0], box[0], mesh[0])[0]] += 1
+
+
+@kernel
+def _number(count, start):
+    """Turn counts (chunks, planes) into the first number of each chunk in each plane."""
+    number = 0
+    for x in range(count.shape[1]):
+        start[x] = number
+        for chunk in range(count.shape[0]):
+            here = count[chunk, x]
+            count[chunk, x] = number
+            number += here
+    start[count.shape[1]] = number
 
 
 @kernel(fast=True)
-def _fill_splines(first, last, charge, mesh, cell, inside, rank, order, taylor, base, weight,
-                  slope):
-    unaliased()
-    c = taylor
-    for r in range(first, last):
-        m = rank[r]
+def _fill_splines(first, last, place, box, charge, mesh, taps, taylor, following, rank, base,
+                  inside, weight):
+    distinct()
+    zero = filled(taylor.dtype.type(0.0))
+    for m in range(first, last):
+        x, _ = _cell(place[m, 0], box[0], mesh[0])
+        r = following[x]
+        following[x] += 1
+        rank[r] = m
         for a in range(3):
-            lowest = cell[m, a] - order + 1
+            cell, u = _cell(place[m, a], box[a], mesh[a])
+            lowest = cell - len(taps) + 1
             base[r, a] = lowest if lowest >= 0 else lowest + mesh[a]
-            factor = charge[m] if a == 0 else 1.0
-            t = inside[m, a] - 0.5
-            for n in range(WIDTH):
-                weight[r, a, n] = factor * (
-                    c[0, n] + t * (c[1, n] + t * (c[2, n] + t * (c[3, n] + t * (
-                        c[4, n] + t * (c[5, n] + t * (c[6, n] + t * c[7, n])))))))
-                slope[r, a, n] = factor * (
-                    c[8, n] + t * (c[9, n] + t * (c[10, n] + t * (c[11, n] + t * (
-                        c[12, n] + t * (c[13, n] + t * c[14, n]))))))
+            t = taylor.dtype.type(u - 0.5)
+            inside[r, a] = t
+            row = row_at(taylor, (len(taps) - 1, 0))
+            for n in range(len(taps) - 2, -1, -1):
+                row = fused(row, filled(t), row_at(taylor, (n, 0)))
+            if a == 0:
+                row = fused(row, filled(taylor.dtype.type(charge[m])), zero)
+            put_row(weight, (r, a, 0), row)
 
 
 @kernel(parallel=True)
-def _splines(charge, mesh, cell, inside, rank, order, taylor, base, weight, slope):
-    """Splines of the charges in sorted order, lowest point first; along x times the charge."""
-    count = rank.shape[0]
+def _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight):
+    """Splines of the charges, sorted by planes of constant x; along x times the charge.
+
+    count : (CHUNKS, n_x) and start : (n_x + 1,) are overwritten; plane x has the charges
+        start[x] … start[x + 1] − 1, in the order in which they were given.
+    rank, base, inside, weight : the number of each, its lowest mesh point, its place in the
+        cell, from the middle, and its splines.
+    """
+    charges = charge.shape[0]
     for chunk in numba.prange(CHUNKS):
-        _fill_splines(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS, charge, mesh, cell,
-                      inside, rank, order, taylor, base, weight, slope)
+        _count(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, place, box, mesh,
+               count[chunk])
+    _number(count, start)
+    for chunk in numba.prange(CHUNKS):
+        _fill_splines(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, place, box,
+                      charge, mesh, taps, taylor, count[chunk], rank, base, inside, weight)
 
 
 @kernel(fast=True)
-def _fill_plane(x, mesh, start, order, base, weight, plane):
-    unaliased()
+def _fill_plane(x, mesh, start, taps, base, weight, plane):
+    distinct()
     plane[:] = 0.0
+    zero, one = filled(plane.dtype.type(0.0)), filled(plane.dtype.type(1.0))
+    order = len(taps)
     for j in range(order):
         c = (x - j + order - 1) % mesh[0]
-        for r in range(start[c], start[c + 1]):
-            z = base[r, 2]
-            profile = weight[r, 2]
-            for k in range(order):
-                factor = weight[r, 0, j] * weight[r, 1, k]
-                y = base[r, 1] + k
-                row = plane[y if y < mesh[1] else y - mesh[1], z:z + WIDTH]
-                eight_lanes()
-                for n in range(WIDTH):
-                    row[n] += factor * profile[n]
-    for y in range(mesh[1]):  # what reached past the end belongs to the beginning
-        for n in range(WIDTH):
-            plane[y, n] += plane[y, mesh[2] + n]
+        # Charges of one body follow one another and overlap. Reading what was just written
+        # costs time: every eighth is taken, and so on.
+        for turn in range(8):
+            for r in range(start[c] + turn, start[c + 1], 8):
+                y, z = base[r, 1], base[r, 2]
+                profile = fused(row_at(weight, (r, 2, 0)), filled(weight[r, 0, j]), zero)
+                for k in range(order):
+                    here = (y + k, z)
+                    put_row(plane, here,
+                            fused(profile, filled(weight[r, 1, k]), row_at(plane, here)))
+    for y in range(WIDTH):  # what reached past the end belongs to the beginning
+        for z in range(plane.shape[1]):
+            plane[y, z] += plane[mesh[1] + y, z]
+    for y in range(mesh[1]):
+        put_row(plane, (y, 0), fused(one, row_at(plane, (y, 0)), row_at(plane, (y, mesh[2]))))
 
 
 @kernel(parallel=True)
-def _spread(mesh, start, order, base, weight, density):
+def _spread(mesh, start, taps, base, weight, density):
     """Charge density on the mesh, one plane of constant x at a time."""
     for x in numba.prange(mesh[0]):
-        _fill_plane(x, mesh, start, order, base, weight, density[x])
+        _fill_plane(x, mesh, start, taps, base, weight, density[x])
 
 
 @kernel(fast=True)
-def _read_field(first, last, mesh, scale, rank, order, base, weight, slope, potential, value,
-                slant, x_sum, y_sum, z_sum, force):
-    unaliased()
+def _read_field(first, last, mesh, scale, taps, taylor, charge, rank, base, inside, weight,
+                potential, slope, force):
+    distinct()
+    zero = filled(potential.dtype.type(0.0))
     for r in range(first, last):
-        for n in range(WIDTH):
-            x_sum[n] = y_sum[n] = z_sum[n] = 0.0
+        for a in range(3):
+            row, t = row_at(taylor, (WIDTH + len(taps) - 2, 0)), filled(inside[r, a])
+            for n in range(len(taps) - 3, -1, -1):
+                row = fused(row, t, row_at(taylor, (WIDTH + n, 0)))
+            put_row(slope, (a, 0), row)
+        x_sum = y_sum = z_sum = zero
         z = base[r, 2]
-        for j in range(order):
+        for j in range(len(taps)):
             x = base[r, 0] + j
-            plane = potential[x if x < mesh[0] else x - mesh[0]]
-            for n in range(WIDTH):
-                value[n] = slant[n] = 0.0
-            for k in range(order):
+            x = x if x < mesh[0] else x - mesh[0]
+            value = slant = zero
+            for k in range(len(taps)):
                 y = base[r, 1] + k
-                row = plane[y if y < mesh[1] else y - mesh[1], z:z + WIDTH]
-                flat, steep = weight[r, 1, k], slope[r, 1, k]
-                eight_lanes()
-                for n in range(WIDTH):
-                    value[n] += flat * row[n]
-                    slant[n] += steep * row[n]
-            flat, steep = weight[r, 0, j], slope[r, 0, j]
-            eight_lanes()
-            for n in range(WIDTH):
-                x_sum[n] += steep * value[n]
-                y_sum[n] += flat * slant[n]
-                z_sum[n] += flat * value[n]
-        fx, fy, fz = 0.0, 0.0, 0.0
-        eight_lanes()
-        for n in range(WIDTH):
-            fx += weight[r, 2, n] * x_sum[n]
-            fy += weight[r, 2, n] * y_sum[n]
-            fz += slope[r, 2, n] * z_sum[n]
-        m = rank[r]
-        force[m, 0] = -scale[0] * fx
-        force[m, 1] = -scale[1] * fy
-        force[m, 2] = -scale[2] * fz
+                row = row_at(potential, (x, y if y < mesh[1] else y - mesh[1], z))
+                value = fused(row, filled(weight[r, 1, k]), value)
+                slant = fused(row, filled(slope[1, k]), slant)
+            flat = filled(weight[r, 0, j])
+            x_sum = fused(value, filled(slope[0, j]), x_sum)
+            y_sum = fused(slant, flat, y_sum)
+            z_sum = fused(value, flat, z_sum)
+        m, flat = rank[r], row_at(weight, (r, 2, 0))
+        force[m, 0] = -scale[0] * charge[m] * total(fused(flat, x_sum, zero))
+        force[m, 1] = -scale[1] * total(fused(flat, y_sum, zero))
+        force[m, 2] = -scale[2] * total(fused(row_at(slope, (2, 0)), z_sum, zero))
 
 
 @kernel(parallel=True)
-def _gather(mesh, scale, rank, order, base, weight, slope, potential, force):
+def _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, potential, force):
     """Force on every charge: minus its charge times the slope of the interpolated potential."""
-    count = rank.shape[0]
+    charges = charge.shape[0]
     for chunk in numba.prange(CHUNKS):
-        work = np.empty((5, WIDTH), potential.dtype)
-        _read_field(count * chunk // CHUNKS, count * (chunk + 1) // CHUNKS, mesh, scale, rank,
-                    order, base, weight, slope, potential, work[0], work[1], work[2],
-                    work[3], work[4], force)
+        slope = np.empty((3, WIDTH), potential.dtype)
+        _read_field(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, mesh, scale, taps,
+                    taylor, charge, rank, base, inside, weight, potential, slope, force)
 
 
 @kernel(parallel=True)
@@ -188,13 +204,14 @@ class MeshEwald:
         self.charge = np.ascontiguousarray(charge, float)
         self.alpha, self.order, self.dtype = alpha, order, np.dtype(dtype)
         self.mesh = np.array(mesh, np.int64)
-        self._taylor = spline_table(order)
+        self._taps = tuple(range(order))  # a tuple, for the compiler to know how many
+        self._taylor = spline_table(order).astype(dtype)
         count, (nx, ny, nz) = len(self.charge), self.mesh
-        self._cell, self._base = np.empty((2, count, 3), np.int64)
-        self._inside = np.empty((count, 3))
-        self._start, self._rank = np.empty(nx + 1, np.int64), np.empty(count, np.int64)
-        self._weight, self._slope = np.empty((2, count, 3, WIDTH), self.dtype)
-        self._field = np.zeros((nx, ny, nz + WIDTH), self.dtype)
+        self._count, self._start = np.empty((CHUNKS, nx), np.int32), np.empty(nx + 1, np.int32)
+        self._rank, self._base = np.empty(count, np.int32), np.empty((count, 3), np.int32)
+        self._inside = np.empty((count, 3), self.dtype)
+        self._weight = np.empty((count, 3, WIDTH), self.dtype)
+        self._field = np.zeros((nx, ny + WIDTH, nz + WIDTH), self.dtype)
         self._share = np.full(nz // 2 + 1, 2.0)
         self._share[0] = 1.0
         if nz % 2 == 0:
@@ -223,19 +240,19 @@ class MeshEwald:
         """
         if not np.array_equal(box, self._box):
             self._prepare(np.array(box, float))
-        mesh, field, nz = self.mesh, self._field, self.mesh[2]
-        _sort(place, self._box, mesh, self._cell, self._inside, self._start, self._rank)
-        _splines(self.charge, mesh, self._cell, self._inside, self._rank, self.order,
-                 self._taylor, self._base, self._weight, self._slope)
-        _spread(mesh, self._start, self.order, self._base, self._weight, field)
-        spectrum = scipy.fft.rfftn(field[:, :, :nz], workers=1)
+        mesh, field, (_, ny, nz) = self.mesh, self._field, self.mesh
+        sorted_charges = self._rank, self._base, self._inside, self._weight
+        _sort(place, self._box, self.charge, mesh, self._taps, self._taylor, self._count,
+              self._start, *sorted_charges)
+        _spread(mesh, self._start, self._taps, self._base, self._weight, field)
+        spectrum = scipy.fft.rfftn(field[:, :ny, :nz], workers=1)
         sums = self._sums(spectrum) if energies else None
         spectrum *= self._coupling
-        field[:, :, :nz] = scipy.fft.irfftn(spectrum, tuple(mesh), norm="forward",
+        field[:, :ny, :nz] = scipy.fft.irfftn(spectrum, tuple(mesh), norm="forward",
                                             overwrite_x=True, workers=1)
         field[:, :, nz:] = field[:, :, :WIDTH]
-        _gather(mesh, mesh / self._box, self._rank, self.order, self._base, self._weight,
-                self._slope, field, force)
+        _gather(mesh, mesh / self._box, self._taps, self._taylor, self.charge, *sorted_charges,
+                field, force)
         return sums
 
     def _sums(self, spectrum):
