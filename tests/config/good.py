@@ -18,6 +18,7 @@ forces:
   tolerance: 1e-4
   splitting: auto
   mesh: {order: 5, spacing: 0.1 nm}
+  mesh_every: 1
   reaction_permittivity: conducting
   damping: 2.0 /nm
   mixing: lorentz-berthelot

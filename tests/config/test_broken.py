@@ -3,6 +3,8 @@
 In each case « stands where the message must point.
 """
 
+import re
+
 import pytest
 
 from swirlight.config import parse_config
@@ -217,6 +219,40 @@ def test_rules_of_a_plain_equilibrium_run():
     with pytest.raises(ConfigError, match="exposures.starts: 2 starts need a stage before"):
         parse_config(dark + "exposures: {kinds: [dark], starts: 2}\n")
     assert parse_config(dark + "exposures: {kinds: [dark], starts: 1}\n").exposures.starts == 1
+
+
+def test_sampled_steps_are_those_of_the_mesh():
+    every = "forces.mesh_every=2"
+    with pytest.raises(ConfigError) as caught:
+        parse_config(GOOD, overrides=[every], name="c.yaml")
+    line, column = _place(GOOD.replace("  totals", "  «totals"), "«")
+    assert list(caught.value.lines) == [
+        f"c.yaml:{line}:{column}: record.totals_every: 0.01 ps is no whole multiple of 2 timesteps"
+        f' (forces.mesh_every) of stage {stage}, 0.004 ps; expected one, for example "0.008 ps"'
+        for stage in ("equilibrate", "exposure")]
+    fine = [every, "record.totals_every=20 fs"]
+    config = parse_config(GOOD, overrides=[*fine, "stages[1].after_light=6.001 ps"])
+    assert config.stages[1].steps % 2 == 0  # rounded up
+    for key, value in {"stages[0].length": "39.998 ps", "record.every": "18 fs",
+                       "exposures.spacing": "9.998 ps"}.items():
+        with pytest.raises(ConfigError, match=re.escape(f"{key}: ")):
+            parse_config(GOOD, overrides=[*fine, f"{key}={value}"])
+    with pytest.raises(ConfigError, match="forces.mesh_every: 2, and electrostatics is none, which"
+                                          " has no mesh; expected 1"):
+        parse_config(GOOD, overrides=[*fine, "forces.electrostatics=none"])
+
+
+def test_a_stage_begins_where_its_mesh_acts():
+    """Ticks go on from stage to stage, and energies are read at whole multiples of them."""
+    text = GOOD[: GOOD.index("light:")] + (
+        "stages: [{length: 12 fs, timestep: 1 fs}, {length: 16 fs, timestep: 4 fs},\n"
+        "         {length: 16 fs}]\nrecord: {every: 16 fs, totals_every: 8 fs}\n")
+    parse_config(text)
+    with pytest.raises(ConfigError) as caught:
+        parse_config(text, overrides=["forces.mesh_every=2"])
+    assert [line.split(": ", 1)[1] for line in caught.value.lines] == [
+        "stages[1]: it begins at 0.012 ps, which is no whole multiple of 2 timesteps"
+        ' (forces.mesh_every) of stage stage-2, 0.008 ps; expected one, for example "0.008 ps"']
 
 
 def test_overrides_are_named_in_messages():

@@ -77,9 +77,11 @@ def travel(system, state, light):
 
 
 @pytest.mark.parametrize("count, cutoff", SIZES)
-@pytest.mark.parametrize("lit", [False, True], ids=["dark", "lit"])
-def test_water_runs_backwards(count, cutoff, lit):
+@pytest.mark.parametrize("lit, mesh_every", [(False, 1), (True, 1), (True, 2)],
+                         ids=["dark", "lit", "lit, mesh every other step"])
+def test_water_runs_backwards(count, cutoff, lit, mesh_every):
     system, start = water(count, cutoff)
+    system = replace(system, interactions=replace(system.interactions, mesh_every=mesh_every))
     there, back = ((Light(system, light) if lit else None) for light in (
         pulses(), tuple(map(reversed_in_time, pulses()))))
     state = start.copy()

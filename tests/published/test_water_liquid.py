@@ -4,6 +4,8 @@ Drift is the slope of the total energy per molecule over time in NVE, by least s
 blocks; its error comes from the scatter of the blocks about the line.
 """
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -19,6 +21,8 @@ from swirlight.species.library import load_species
 from swirlight.state import State
 from swirlight.system import Interactions, System
 from swirlight.units import BOLTZMANN, KJ_PER_MOL
+from tests.motion.bodies import response
+from tests.motion.test_light import ALPHA_S, optical
 
 DENSITY = 0.998 / 18.015 * 602.214076  # molecules per nm³ at 0.998 g/cm³
 TEMPERATURE = 298.0
@@ -95,6 +99,22 @@ def test_total_energy_does_not_drift(settled, table, molecules, form):
     slope, error = (1000.0 * x for x in drift(times, energy))  # per ns
     table(f"NVE drift, {molecules} SPC/E, {form}, 2 fs, 120 ps",
           f"{slope:+.4f} ± {error:.4f} kT/molecule/ns", "|drift| ≤ 0.01, error ≤ 0.005")
+    assert error <= 0.005 and abs(slope) <= 0.01
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("mesh_every", [2, 3])
+@pytest.mark.parametrize("lit", [False, True], ids=["dark", "lit"])
+def test_energy_with_a_mesh_that_acts_less_often(settled, table, mesh_every, lit):
+    """Dark, and in an averaged pulse that acts through an invented polarizability."""
+    kind = replace(load_species("water"), responses=(response(ALPHA_S),))
+    system = replace(water(216, mesh_every=mesh_every), species=(kind,))
+    light = Light(system, (optical(3e12, 0.5, 2.0),)) if lit else None
+    times, energy = residuals(system, settled(216), 0.002, 120.0, every=0.024, light=light)
+    slope, error = (1000.0 * x for x in drift(times, energy))
+    table(f"NVE drift, 216 SPC/E, mesh every {2 * mesh_every} fs, {'lit' if lit else 'dark'}",
+          f"{slope:+.4f} ± {error:.4f} kT/molecule/ns, rms {energy.std():.1e} kT",
+          "|drift| ≤ 0.01, error ≤ 0.005")
     assert error <= 0.005 and abs(slope) <= 0.01
 
 

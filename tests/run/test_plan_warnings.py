@@ -55,6 +55,15 @@ OVERRIDES = {
          "exposures.spacing=7 ps", "record.every=140 fs", "record.totals_every=140 fs",
          "stages[1].length=4.2 ps"),
     ),
+    # the fastest thermal rotation of water takes 0.313 ps
+    "mesh-every": (
+        ("sample.species[0].use=water", "sample.species[0].count=216", "forces.mesh_every=3",
+         "sample.density=1 g/cm^3", "forces.cutoff=0.9 nm", "record.every=30 fs",
+         "record.totals_every=30 fs", "stages[0].length=12 ps", "stages[1].length=6 ps",
+         "exposures.spacing=6 ps"),
+        ("sample.species[0].use=water", "sample.species[0].count=216", "forces.mesh_every=2",
+         "sample.density=1 g/cm^3", "forces.cutoff=0.9 nm"),
+    ),
     "bath-on-rotation": ((LANGEVIN,), (f"{LANGEVIN[:-1]}, acts_on: translation}}",)),
     # four thermal rates of acetonitrile: 1.41 THz, shown by records every 354 fs
     "nyquist-rotation": (("record.every=356 fs",), ("record.every=352 fs",)),

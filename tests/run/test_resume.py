@@ -1,5 +1,6 @@
 """Killed, stopped, resumed: the bytes of a run that nobody disturbed."""
 
+import contextlib
 import random
 import signal
 import time
@@ -7,7 +8,7 @@ import time
 import pytest
 
 from swirlight.config import load_config
-from swirlight.errors import InputError
+from swirlight.errors import InputError, StopRequested
 from swirlight.run.launch import launch, resume
 from swirlight.run.status import read_status
 from tests.run.small import CONFIG, command, fingerprints, finish, write_config
@@ -52,6 +53,37 @@ def test_killed_and_resumed(path, undisturbed, tmp_path):
     expected, seconds = undisturbed
     assert kill_until_done(path, tmp_path / "a", 3, 0.5 * seconds, seed=1) >= 1
     assert fingerprints(tmp_path / "a") == expected
+
+
+MESH = """
+title: a mesh that acts every third step
+seed: 4
+sample: {species: [{use: acetonitrile, count: 32}], density: 0.777 g/cm^3, temperature: 298 K}
+forces: {cutoff: 0.7 nm, mesh_every: 3, tolerance: 1e-3}
+stages:
+  - {name: settle, length: 0.12 ps, timestep: 2 fs, thermostat: {method: langevin, friction: 2 /ps}}
+  - {name: exposure, length: 0.18 ps}
+record: {every: 12 fs, totals_every: 6 fs}
+"""
+
+
+def test_stopped_between_two_steps_of_the_mesh(tmp_path, monkeypatch):
+    config = load_config(write_config(tmp_path, MESH))
+    expected = fingerprints(launch(config, into=tmp_path / "a", progress=False, threads=1).path)
+    steps = 0
+
+    def requested(self):
+        nonlocal steps
+        steps += 1
+        return signal.SIGTERM if steps % 7 == 0 else 0
+
+    monkeypatch.setattr("swirlight.run.stop.StopFile.requested", requested)
+    with pytest.raises(StopRequested):
+        launch(config, into=tmp_path / "b", progress=False, threads=1)
+    while not (tmp_path / "b" / "summary.json").is_file():
+        with contextlib.suppress(StopRequested):
+            resume(tmp_path / "b", progress=False, threads=1)
+    assert steps == 150 and fingerprints(tmp_path / "b") == expected  # stopped 21 times
 
 
 @pytest.mark.slow

@@ -125,24 +125,35 @@ class Config(Section):
                                     "the last stage"
 
     def _length_after_light(self):
-        """Turn `after_light` into the length, rounded up to whole steps."""
+        """Turn `after_light` into the length, rounded up to whole steps (of the mesh)."""
         stage = self.stages[-1]
         if stage.after_light is not None:
             wanted = max(0.0, *(pulse.end for pulse in self.light)) + stage.after_light
-            steps = max(1, math.ceil(wanted / stage.timestep - 1e-6))
+            block = self.forces.mesh_every
+            steps = block * max(1, math.ceil(wanted / (block * stage.timestep) - 1e-6))
             # As few digits as the timestep has: what is printed reads back as the same number.
             length = float(f"{steps * stage.timestep:.12g}")
             stage.fill(length=length, after_light=None)
 
     def _whole_steps(self):
-        """Every length and stride is a whole multiple of the timestep it is counted in."""
+        """Every length and stride is a whole multiple of the timestep it is counted in.
+
+        With a mesh that acts every n-th step: of n timesteps, from the beginning of each stage.
+        """
+        block = self.forces.mesh_every
         *unlit, recorded = self.stages if self.stages[-1].lit else (*self.stages, self.stages[-1])
         for i, stage in enumerate(self.stages):
-            yield from _multiple(("stages", i, "length"), stage.length, stage)
-            yield from _multiple(("record", "totals_every"), self.record.totals_every, stage)
-        yield from _multiple(("record", "every"), self.record.every, recorded)
+            yield from _multiple(("stages", i, "length"), stage.length, stage, block)
+            yield from _multiple(("record", "totals_every"), self.record.totals_every, stage,
+                                 block)
+        yield from _multiple(("record", "every"), self.record.every, recorded, block)
         if self.exposures and self.exposures.spacing and unlit:
-            yield from _multiple(("exposures", "spacing"), self.exposures.spacing, unlit[-1])
+            yield from _multiple(("exposures", "spacing"), self.exposures.spacing, unlit[-1],
+                                 block)
+        for i in range(1, len(self.stages) - 1) if block > 1 else ():  # sampled as one trajectory
+            begin = sum(stage.length for stage in self.stages[:i])
+            yield from _multiple(("stages", i), begin, self.stages[i], block,
+                                 "it begins at {}, which")
 
     def _exposed(self):
         if self.exposures is None:
@@ -168,11 +179,13 @@ class Config(Section):
                         f"sample; expected a site of {' or '.join(names)}"
 
 
-def _multiple(path, length, stage):
-    """A problem, if this is not a whole multiple of the stage's timestep."""
-    ratio = length / stage.timestep
+def _multiple(path, length, stage, block, what="{}"):
+    """A problem, if this is not a whole multiple of `block` of the stage's timesteps."""
+    unit = block * stage.timestep
+    ratio = length / unit
     if abs(ratio - round(ratio)) > 1e-6 or round(ratio) < 1:
-        below = max(1, math.floor(ratio)) * stage.timestep
-        yield path, f"{length:.9g} ps is no whole multiple of the timestep of stage " \
-                    f"{stage.name}, {stage.timestep:.9g} ps; expected one, for example " \
+        below = max(1, math.floor(ratio)) * unit
+        steps = "the timestep" if block == 1 else f"{block} timesteps (forces.mesh_every)"
+        yield path, f"{what.format(f'{length:.9g} ps')} is no whole multiple of {steps} of stage " \
+                    f"{stage.name}, {unit:.9g} ps; expected one, for example " \
                     f'"{below:.9g} ps"'

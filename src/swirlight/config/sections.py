@@ -127,12 +127,21 @@ class Forces(Section):
                         json_schema_input_type=Mesh | Annotated[str, Choice("auto")]),
         WrapSerializer(lambda mesh, write: write(mesh) if isinstance(mesh, Mesh) else "auto"),
     ] = "auto"
+    mesh_every: Annotated[int, Count(1, 10, 2)] = 1
     reaction_permittivity: Annotated[
         float, Number(1.0, 1e9, 78.4, words={"conducting": float("inf")})] = "conducting"
     damping: Annotated[float, Quantity("inverse length", "0 /nm", "100 /nm")] = "2.0 /nm"
     mixing: Annotated[str, Choice("lorentz-berthelot", "geometric")] = "lorentz-berthelot"
     pairs: tuple[PairOverride, ...] = ()
     precision: Annotated[str, Choice("mixed", "double")] = "mixed"
+
+    @model_validator(mode="after")
+    def _mesh_every(self):
+        if self.mesh_every > 1 and self.electrostatics != "mesh-ewald":
+            raise Problems((("mesh_every",), f"{self.mesh_every}, and electrostatics is "
+                            f"{self.electrostatics}, which has no mesh; expected 1, or "
+                            "electrostatics: mesh-ewald"))
+        return self
 
 
 class Thermostat(Section):

@@ -4,7 +4,18 @@
     with bath kick ½ · drift ½ · bath · drift ½ · kick ½
 
 Fields act with their values at the times of the kicks, which keeps second order for light
-that changes in time. Times are counted in whole steps since the stage began, and schedules
+that changes in time.
+
+The mesh part of the forces may act at every n-th step only, n times as strongly (impulse form
+of multiple timesteps: Tuckerman, Berne & Martyna, J. Chem. Phys. 97, 1990 (1992); Grubmüller,
+Heller, Windemuth & Schulten, Mol. Simul. 6, 121 (1991)):
+
+    kick ½ (pairs + n mesh) · drift 1 · kick 1 (pairs) · … · drift 1 · kick ½ (pairs + n mesh)
+
+which stays symplectic and time-reversible over n steps. Momenta in between carry half of the
+impulse, so that energies mean something only at whole multiples of n steps.
+
+Times are counted in whole steps since the stage began, and schedules
 of the light are made in blocks that start at multiples of `BLOCK` steps: a run that was
 interrupted meets the same numbers.
 """
@@ -33,8 +44,8 @@ class Mover:
     """Moves a state under forces, light and a thermostat, and keeps the ledger.
 
     system : System.
-    force_field : has `evaluate(position, orientation, box, energies) -> Forces`; None: no
-        interactions.
+    force_field : has `evaluate(position, orientation, box, energies) -> Forces`, and takes
+        `mesh` where the system's `interactions.mesh_every` > 1; None: no interactions.
     light : Light, or None.
     timestep : [ps]
     thermostat : of `thermostats.make_thermostat`, or None.
@@ -57,7 +68,11 @@ class Mover:
         self.freedom = degrees_of_freedom(system, self.momentum_conserved)
         self.ledger = Ledger()
         self.load = Load(system.bodies)
+        self._mesh_every = system.interactions.mesh_every
+        self._push = self.load.of_pairs()
         self._light_load = self.light and self.light.new_load()
+        lit = Load(system.bodies, light=self._light_load)  # the same rows at every step
+        self._of_light, self._of_bias = lit.of_light(), lit.of_bias()
         self._kinds = rotor_kinds(system.inertia)
         self._work = Workspace(system.bodies)
         self._count, self._offset = 0, 0.0  # time since the stage began: whole steps and a rest
@@ -86,7 +101,8 @@ class Mover:
     def advance(self, state, energies=True):
         """Move the state by one step, in place; `load` and `ledger` follow.
 
-        energies : whether this step's energies and virial will be read.
+        energies : whether this step's energies and virial will be read; they belong to whole
+            multiples of `mesh_every` steps.
         Raises RunError, naming step and body, when a force or momentum is no longer finite.
         """
         self._kick(state)
@@ -128,7 +144,7 @@ class Mover:
         load, half = self.load, 0.5 * self.timestep
         if load.light is not None:
             self.ledger.values[ABSORBED] += half * load.light.absorbed_power
-        broken = kick(state, self.system, load.of_pairs(), load.of_light(), load.of_bias(), half,
+        broken = kick(state, self.system, self._push, self._of_light, self._of_bias, half,
                       self._work, self.ledger)
         if broken >= 0:
             raise RunError(_what_broke(self.system, state, load, int(broken)))
@@ -136,8 +152,8 @@ class Mover:
     def _evaluate(self, state, energies):
         self.load = load = Load(self.system.bodies, self._time())
         if self.force_field is not None:
-            load.field = self.force_field.evaluate(
-                state.position, state.orientation, state.box, energies)
+            load.field = self._interactions(state, energies)
+            self._push = self._weighted(load)
         if self.light is not None:
             index = self._count % BLOCK
             if self._block is None or index == 0:
@@ -147,6 +163,25 @@ class Mover:
             load.light = self._light_load
             load.sum_light = lambda: self.light.energies(
                 self._block, index, state.orientation, state.position)
+
+    def _interactions(self, state, energies):
+        where = state.position, state.orientation, state.box
+        if self._mesh_every == 1:
+            return self.force_field.evaluate(*where, energies)
+        return self.force_field.evaluate(*where, energies, mesh=self._mesh_weight > 0)
+
+    def _weighted(self, load):
+        """(force, torque) with which the interactions enter the kicks at this instant."""
+        mesh = getattr(load.field, "mesh_force", None), getattr(load.field, "mesh_torque", None)
+        if mesh[0] is None:
+            return load.of_pairs()
+        more = self._mesh_weight - 1  # they are in the forces once
+        return tuple(a + more * b for a, b in zip(load.of_pairs(), mesh, strict=True))
+
+    @property
+    def _mesh_weight(self):
+        """How strongly the mesh part acts at the present step."""
+        return self._mesh_every if self._count % self._mesh_every == 0 else 0
 
     def _time(self):
         return self._offset + self._count * self.timestep

@@ -51,6 +51,7 @@ def workload(system, box, threads=1):
     parts = [f"{n} {s.name}" for s, n in zip(system.species, system.counts, strict=True)]
     parts += [
         f"cutoff {forces.cutoff:.4g} nm", forces.electrostatics, f"tolerance {forces.tolerance:g}",
+        *([f"mesh every {forces.mesh_every} steps"] if forces.mesh_every > 1 else []),
         forces.precision, f"volume {math.prod(box):.2g} nm^3", f"{threads} threads",
     ]
     shared = (
@@ -70,11 +71,11 @@ def pair_count(system, box):
 
 
 def _electrostatics(system, box):
-    """Seconds in reciprocal space. [s]"""
+    """Seconds a step in reciprocal space. [s]"""
     forces = system.interactions
     charges = int((system.site_charge != 0.0).sum())
     if forces.electrostatics == "mesh-ewald":
-        return SECONDS_PER_MESH_CHARGE * charges
+        return SECONDS_PER_MESH_CHARGE * charges / forces.mesh_every
     if forces.electrostatics != "direct-ewald" or not charges:
         return 0.0
     # exp(−α²rc²) and exp(−k²/4α²) both at the tolerance

@@ -24,6 +24,7 @@ def build_system(config):
         splitting=forces.splitting,
         mesh_order=forces.mesh.order if forces.mesh else None,
         mesh_spacing=forces.mesh.spacing if forces.mesh else None,
+        mesh_every=forces.mesh_every,
         reaction_permittivity=forces.reaction_permittivity,
         damping=forces.damping,
         mixing=forces.mixing,

@@ -102,7 +102,8 @@ class Work:
             raise RunError("exposures.spacing: left out, but atoms alone have no rotation to take"
                            " it from; give it in the config")
         slowest = max(tau for times in found.values() for tau, _ in times.values())
-        steps = max(1, round(SAFETY * slowest / last.timestep))
+        block = self.config.forces.mesh_every
+        steps = block * max(1, round(SAFETY * slowest / (block * last.timestep)))
         return {
             "value": steps * last.timestep,
             "found": {

@@ -10,6 +10,7 @@ from swirlight.light.regime import beats
 from swirlight.run.plan.page import Notice, Row, Section, quantity
 
 ROTATION_STEPS = 40  # timesteps in the fastest thermal rotation; librations are a few times faster
+MESH_EVALUATIONS = 75  # likewise, if the mesh has a step of its own: 4.2 fs for water
 THERMAL_BAND = 4.0  # thermal rates √(kT/I): hardly a body turns faster
 LIBRATIONS = "librations are usually several times faster than free rotation"
 
@@ -35,9 +36,22 @@ def stages(subject):
                 yield Notice("steps-per-rotation", f"{key}.timestep: {steps:.3g} timesteps in the"
                              f" fastest thermal rotation; {ROTATION_STEPS} would be"
                              f" {subject.rotation_period / ROTATION_STEPS:.3g} ps")
+        every = subject.system.interactions.mesh_every
+        if every > 1:
+            rows.append(quantity("mesh every", every * stage.timestep, "time"))
+            yield from _mesh_every(key, every * stage.timestep, subject)
         yield Section(f"{key}: {stage.name}", tuple(rows))
         if stage.lit:
             yield from _bath_on_rotation(key, stage, subject)
+
+
+def _mesh_every(key, interval, subject):
+    if interval > subject.rotation_period / MESH_EVALUATIONS * (1.0 + 1e-9):
+        yield Notice("mesh-every", f"forces.mesh_every: in {key} the mesh acts every"
+                     f" {1e3 * interval:.3g} fs; {LIBRATIONS}, and impulses that come at a"
+                     " fraction of their period pump energy into them. Let them come at most"
+                     f" {1e3 * subject.rotation_period / MESH_EVALUATIONS:.2g} fs apart, or watch"
+                     " energy_residual")
 
 
 def _bath_on_rotation(key, stage, subject):
