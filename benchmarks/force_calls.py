@@ -57,6 +57,7 @@ def rows(name, bodies, thread_counts, rounds):
             contenders[precision, threads] = Contender(calls[precision], threads)
     if compared:
         exact = ForceCall(with_plain_cutoff(name, bodies, "double"), state)()
+        calls["mixed"]()
         twin, script = rivals(system, state, calls["mixed"].pairs.neighbours.skin)
         pairs = script.near(script.places()[1])
         check_agreement(twin(), exact, "double")
@@ -65,26 +66,26 @@ def rows(name, bodies, thread_counts, rounds):
         contenders |= {"twin": Contender(twin), "script": Contender(script),
                        "without tree": Contender(lambda: script(pairs))}
     times = in_turns(contenders, rounds)
-    useful = useful_pairs(system, state)
+    skin, useful = calls["mixed"].pairs.neighbours.skin, useful_pairs(system, state)
     for precision in precisions:
         alone = times[precision, 1]
-        yield [name, bodies, precision, f"{median_ms(alone):.3f}", useful,
+        yield [name, bodies, precision, f"{skin:.2f}", f"{median_ms(alone):.3f}", useful,
                f"{1e6 * median_ms(alone) / useful:.2f}",
                *(f"{ratio(times[other], alone):.1f}" if compared else "-"
                  for other in ("twin", "script", "without tree")),
                f"{ratio(alone, times[precision, 2]):.2f}" if 2 in thread_counts else "-"]
 
 
-HEAD = ("system", "bodies", "precision", "ms/call", "useful pairs", "ns/pair", "twin/it",
+HEAD = ("system", "bodies", "precision", "skin nm", "ms/call", "useful pairs", "ns/pair", "twin/it",
         "script/it", "same, no tree", "2 threads")
 NOTE = f"""\
 One call of the pair forces, from positions and orientations to forces and torques, no energies,
 the list still good. Lennard-Jones cut plainly and real-space Ewald of {SPLITTING} /nm, both at
 {CUTOFF} nm between sites. A useful pair: two sites of two bodies within the cutoff, counted once.
 "five" (charge and Lennard-Jones on all five sites) is invented for timing; the atom has argon's
-parameters. twin: plain textbook loop, double, half list, one thread (textbook.py). script: numpy
-and scipy, its k-d tree asked for the pairs in every call, as such a script does (script.py).
-2 threads: time on one thread over time on two. All others: one thread."""
+parameters. twin: plain textbook loop, double, half list with the same skin, one thread
+(textbook.py). script: numpy and scipy, its k-d tree asked for the pairs in every call, as such a
+script does (script.py). 2 threads: time on one thread over time on two. All others: one thread."""
 
 
 def table(quick, thread_counts, rounds):

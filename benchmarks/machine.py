@@ -34,16 +34,13 @@ def heading():
     settings = ", ".join(f"{name}={value}" for name, value in sorted(os.environ.items())
                          if name.startswith(("NUMBA_", "OMP_", "GOMP_", "KMP_"))
                          and name != "NUMBA_CACHE_DIR")
-    load = ", ".join(f"{x:.2f}" for x in os.getloadavg())
     return [f"{processor()}, {os.cpu_count()} cores, {vectors()}; {platform.system()}"
             f" {platform.release()}",
             f"Python {platform.python_version()}, {versions}",
-            f"settings: {settings or 'none'}; threading layer {layer()}; load before: {load}"]
+            f"settings: {settings or 'none'}; up to"
+            f" {numba.config.NUMBA_NUM_THREADS} threads; {load()}"]
 
 
-def layer():
-    """The library that runs numba's threads, known once a parallel kernel has run."""
-    try:
-        return numba.threading_layer()
-    except ValueError:
-        return numba.config.THREADING_LAYER
+def load():
+    """How busy the machine is, its own work of the last minutes included."""
+    return "load over 1, 5, 15 minutes: " + ", ".join(f"{x:.2f}" for x in os.getloadavg())

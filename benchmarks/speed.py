@@ -1,7 +1,7 @@
 """How fast the pair forces and whole steps are.
 
     python benchmarks/speed.py             all tables; some ten minutes on an idle machine
-    python benchmarks/speed.py --quick     their main rows, in a minute or so
+    python benchmarks/speed.py --quick     their main rows, in a minute or two
     python benchmarks/speed.py --json --system water --bodies 4000 --threads 1
         --precision mixed --cutoff '0.9 nm'         one row as a JSON object, for programs
 
@@ -28,7 +28,7 @@ from timing import ROUNDS, Contender, in_turns, median_ms
 from swirlight import units
 from swirlight.compiled import numba
 
-QUICK_ROUNDS = 5
+QUICK_ROUNDS = GROWTH_ROUNDS = 5
 
 
 def one_row(name, bodies, threads, precision, cutoff):
@@ -81,18 +81,22 @@ def all_tables(quick):
     show("1. Pair forces", f"{force_calls.NOTE}\n{force_calls.smallest_box()}", force_calls.HEAD,
          force_calls.table(quick, threads, rounds))
     show("2. Lists", lists.NOTE, lists.HEAD, lists.table(quick, rounds))
-    remarks = []
+    meshes = []
     show("3. Whole steps", steps.NOTE, steps.HEAD,
-         steps.table(quick, threads, rounds, remarks.append))
-    print(*remarks, sep="\n")
+         steps.table(quick, threads, rounds, meshes.append))
+    print(*meshes, sep="\n")
     show("   What a step is spent on", steps.SHARE_NOTE, steps.SHARE_HEAD,
          steps.shares(threads, rounds))
-    show("4. Growth", steps.GROWTH_NOTE, steps.GROWTH_HEAD, steps.growth(quick, QUICK_ROUNDS))
     if not quick:
+        meshes.clear()
+        show("4. Growth", steps.GROWTH_NOTE, steps.GROWTH_HEAD,
+             steps.growth(GROWTH_ROUNDS, meshes.append))
+        print(*meshes, sep="\n")
         show("   Memory", memory.NOTE, memory.HEAD, memory.rows())
     show("5. Side by side", processes.NOTE, processes.HEAD, processes.rows(rounds))
     show("6. Beginning", beginning.NOTE, beginning.HEAD, beginning.rows())
-    print(f"\nmeasured in {time.perf_counter() - began:.0f} s")
+    print(f"\nmeasured in {time.perf_counter() - began:.0f} s; threads run by"
+          f" {numba.threading_layer()}; {machine.load()}")
 
 
 def main():

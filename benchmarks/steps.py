@@ -125,19 +125,22 @@ GROWTH_NOTE = """\
 Water, one thread; x of time = c N^x fitted to the logarithms."""
 
 
-def growth(quick, rounds):
-    """Rows: time of a step over the number of bodies."""
-    sizes = (4000, 32000) if quick else (4000, 32000, 108000)
+def growth(rounds, remark, sizes=(4000, 32000, 108000)):
+    """Rows: time of a step over the number of bodies; what meshes were chosen to `remark`."""
     methods = {m: METHODS[m] for m in ("mesh Ewald", "reaction field")}
     numba.set_num_threads(1)
-    runners = {(method, bodies): Contender(Trajectory(as_in_a_run("water", bodies, **choices),
-                                                      liquid("water", bodies, CUTOFF)))
-               for method, choices in methods.items() for bodies in sizes}
-    for (_, bodies), runner in runners.items():
-        for _ in range(SETTLE if bodies < 100000 else SETTLE // 2):
-            runner.call()
+    runners = {}
+    for method, choices in methods.items():
+        for bodies in sizes:
+            runner = Trajectory(as_in_a_run("water", bodies, **choices),
+                                liquid("water", bodies, CUTOFF))
+            for _ in range(SETTLE if bodies < 100000 else SETTLE // 2):
+                runner()
+            if method == "mesh Ewald":
+                remark(f"{bodies} water: {mesh_chosen(runner.field)}")
+            runners[method, bodies] = Contender(runner)
     times = in_turns(runners, rounds, seconds=0.3, least=40, average=np.mean)
     for method in methods:
         ms = [1e3 * np.median(times[method, bodies]) for bodies in sizes]
         exponent = np.polyfit(np.log(sizes), np.log(ms), 1)[0]
-        yield [method, *(f"{t:.2f}" for t in ms), *["-"] * (3 - len(ms)), f"{exponent:.3f}"]
+        yield [method, *(f"{t:.2f}" for t in ms), f"{exponent:.3f}"]

@@ -43,9 +43,9 @@ def _pair_forces(position, box, lever, start, neighbour, sigma, epsilon, product
             dx = position[i, 0] - position[j, 0]
             dy = position[i, 1] - position[j, 1]
             dz = position[i, 2] - position[j, 2]
-            dx -= box[0] * round(dx / box[0])
-            dy -= box[1] * round(dy / box[1])
-            dz -= box[2] * round(dz / box[2])
+            dx -= box[0] * np.rint(dx / box[0])
+            dy -= box[1] * np.rint(dy / box[1])
+            dz -= box[2] * np.rint(dz / box[2])
             for a in range(sites):
                 for b in range(sites):
                     rx = dx + lever[i, a, 0] - lever[j, b, 0]
