@@ -9,6 +9,9 @@ import numpy as np
 import pytest
 
 from swirlight.compiled import numba
+from swirlight.motion.draw import draw_orientations
+from swirlight.run.arrange import lattice_positions
+from swirlight.state import State
 
 FOLDER = pathlib.Path(__file__).parents[1] / "benchmarks"
 
@@ -22,35 +25,39 @@ def benchmarks():
 
 
 @pytest.fixture
-def small(benchmarks):
-    """A system and a state whose box just holds one image of each body at 0.6 nm."""
-    def make(name, precision="double", bodies=300, cutoff=0.6):
-        systems, starts = benchmarks("systems"), benchmarks("starts")
-        system = systems.with_plain_cutoff(name, bodies, precision, cutoff)
-        return system, starts.liquid(name, bodies, cutoff)
+def loose(benchmarks):
+    """A system and a state on a wide lattice, without overlaps; one image of each body."""
+    def make(name, bodies=256, cutoff=0.6):
+        systems, random = benchmarks("systems"), np.random.default_rng(5)
+        system = systems.with_plain_cutoff(name, bodies, "double", cutoff)
+        box = 1.2 * systems.box_of(name, bodies)
+        position = lattice_positions(bodies, box, random)
+        position += random.normal(scale=0.01, size=position.shape)
+        return system, State(position, draw_orientations(bodies, random),
+                             *np.zeros((2, bodies, 3)), box)
 
     return make
 
 
 @pytest.mark.parametrize("name", ["water", "atoms", "five"])
-def test_rivals_agree_with_the_engine(benchmarks, small, name):
+def test_rivals_agree_with_the_engine(benchmarks, loose, name):
     force_calls = benchmarks("force_calls")
-    system, state = small(name)
+    system, state = loose(name)
     call = force_calls.ForceCall(system, state)
     expected = call()
-    for rival in force_calls.rivals(system, state, call.pairs.neighbours.skin):
-        force_calls.check_agreement(rival(), expected, "double")
-    twin = force_calls.rivals(system, state, 0.0)[0]
+    twin, script = force_calls.rivals(system, state, call.pairs.neighbours.skin)
     twin.force[:] = np.nan
     force_calls.check_agreement(twin(), expected, "double")
-    wrong = expected[0] * (1 + 1e-8), expected[1]
+    force_calls.check_agreement(script(), expected, "double")
+    force_calls.check_agreement(script(script.near(script.places()[1])), expected, "double")
     with pytest.raises(AssertionError, match="forces differ by"):
-        force_calls.check_agreement(wrong, expected, "double")
+        force_calls.check_agreement((expected[0] + 1e-8 * np.abs(expected[0]).max(),
+                                     expected[1]), expected, "double")
 
 
-def test_useful_pairs_are_those_of_a_plain_count(benchmarks, small):
+def test_useful_pairs_are_those_of_a_plain_count(benchmarks, loose):
     systems = benchmarks("systems")
-    system, state = small("water")
+    system, state = loose("water")
     place, owner = systems.site_places(system, state)
     count = 0
     for k in range(len(place) - 1):
@@ -61,19 +68,20 @@ def test_useful_pairs_are_those_of_a_plain_count(benchmarks, small):
     assert systems.useful_pairs(system, state) == count
 
 
-def test_repeated_boxes_keep_density_and_structure(benchmarks, small):
-    starts, systems = benchmarks("starts"), benchmarks("systems")
-    system, state = small("atoms", bodies=500)
-    pairs = systems.useful_pairs(system, state)
-    large, many = small("atoms", bodies=4000)
-    assert systems.useful_pairs(large, many) == 8 * pairs
-    assert many.box == pytest.approx(2 * state.box, rel=1e-12)
-    odd = starts.liquid("atoms", 3997, 0.6)
+def pairs_of_atoms(benchmarks, bodies):
+    systems, state = benchmarks("systems"), benchmarks("starts").liquid("atoms", bodies, 0.6)
+    return systems.useful_pairs(systems.with_plain_cutoff("atoms", bodies, cutoff=0.6), state)
+
+
+def test_repeated_boxes_keep_density_and_structure(benchmarks):
+    liquid = benchmarks("starts").liquid
+    assert pairs_of_atoms(benchmarks, 4000) == 8 * pairs_of_atoms(benchmarks, 500)
+    small, odd = liquid("atoms", 500, 0.6), liquid("atoms", 3997, 0.6)
     assert odd.position.shape == (3997, 3)
-    assert 3997 / odd.box.prod() == pytest.approx(500 / state.box.prod(), rel=1e-12)
+    assert 3997 / odd.box.prod() == pytest.approx(500 / small.box.prod(), rel=1e-12)
 
 
-def test_one_row(benchmarks, small, monkeypatch, capsys):
+def test_one_row(benchmarks, monkeypatch, capsys):
     speed = benchmarks("speed")
     monkeypatch.setattr(sys, "argv", [
         "speed.py", "--json", "--system", "atoms", "--bodies", "500", "--threads", "1",
@@ -84,7 +92,7 @@ def test_one_row(benchmarks, small, monkeypatch, capsys):
     finally:
         numba.set_num_threads(threads)
     row = json.loads(capsys.readouterr().out)
-    assert row["useful_pairs"] == benchmarks("systems").useful_pairs(*small("atoms", bodies=500))
+    assert row["useful_pairs"] == pairs_of_atoms(benchmarks, 500)
     assert row["ns_per_useful_pair"] == pytest.approx(
         1e6 * row["ms_per_force_call"] / row["useful_pairs"])
     assert row["steps_per_second"] > 0
