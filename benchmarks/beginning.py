@@ -31,8 +31,8 @@ def rows():
 
 def _seconds(environment):
     start = time.perf_counter()
-    done = subprocess.run([sys.executable, __file__], check=True, capture_output=True, text=True,
-                          env=environment)
+    done = subprocess.run([sys.executable, __file__], check=True, stdout=subprocess.PIPE,
+                          text=True, env=environment)
     return time.perf_counter() - start, float(done.stdout)
 
 

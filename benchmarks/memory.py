@@ -1,6 +1,6 @@
 """Peak memory of a large box, each electrostatics in a process of its own.
 
-    python memory.py start.npz electrostatics       what the process itself prints: JSON
+    python memory.py folder electrostatics sizes       such a process; prints JSON
 """
 
 import json
@@ -56,22 +56,27 @@ def rows():
             np.savez(pathlib.Path(folder, f"{bodies}.npz"),
                      **{name: getattr(state, name) for name in State.ARRAYS})
         for method in ("mesh-ewald", "reaction-field"):
-            done = subprocess.run([sys.executable, __file__, folder, method], check=True,
-                                  capture_output=True, text=True)
-            empty, most, mesh = json.loads(done.stdout)
+            _process(folder, method, SMALL)  # so that the one that counts compiles nothing
+            (empty, _), (most, mesh) = _process(folder, method, SMALL, BODIES)
             yield [method, f"{empty / 1e6:.0f}", f"{most / 1e6:.0f}", f"{mesh / 1e6:.0f}",
                    f"{(most - empty - mesh) / BODIES / 1e3:.2f}"]
 
 
-def main(folder, method):
-    def start(bodies):
-        with np.load(pathlib.Path(folder, f"{bodies}.npz")) as arrays:
-            return State(**arrays)
+def _process(folder, method, *sizes):
+    """For each size in turn, what a fresh process has had at most by then, and mesh arrays."""
+    done = subprocess.run([sys.executable, __file__, folder, method, *map(str, sizes)],
+                          check=True, stdout=subprocess.PIPE, text=True)
+    return json.loads(done.stdout)
 
-    run(start(SMALL), method)
-    empty = peak()
-    mesh = run(start(BODIES), method)
-    print(json.dumps([empty, peak(), mesh]))
+
+def main(folder, method, *sizes):
+    found = []
+    for size in sizes:
+        with np.load(pathlib.Path(folder, f"{size}.npz")) as arrays:
+            state = State(**arrays)
+        mesh = run(state, method)
+        found.append([peak(), mesh])
+    print(json.dumps(found))
 
 
 if __name__ == "__main__":
