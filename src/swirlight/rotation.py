@@ -23,12 +23,16 @@ def multiply(a, b):
 def rotation_matrix(q):
     """(..., 3, 3) matrices R of unit quaternions (..., 4): v_lab = R v_body."""
     w, x, y, z = np.moveaxis(np.asarray(q, float), -1, 0)
-    rows = [
-        [w * w + x * x - y * y - z * z, 2 * (x * y - w * z), 2 * (x * z + w * y)],
-        [2 * (x * y + w * z), w * w - x * x + y * y - z * z, 2 * (y * z - w * x)],
-        [2 * (x * z - w * y), 2 * (y * z + w * x), w * w - x * x - y * y + z * z],
-    ]
-    return np.stack([np.stack(row, axis=-1) for row in rows], axis=-2)
+    rows = (
+        (w * w + x * x - y * y - z * z, 2 * (x * y - w * z), 2 * (x * z + w * y)),
+        (2 * (x * y + w * z), w * w - x * x + y * y - z * z, 2 * (y * z - w * x)),
+        (2 * (x * z - w * y), 2 * (y * z + w * x), w * w - x * x - y * y + z * z),
+    )
+    matrix = np.empty((*w.shape, 3, 3))
+    for i, row in enumerate(rows):
+        for j, entry in enumerate(row):
+            matrix[..., i, j] = entry
+    return matrix
 
 
 def to_laboratory(q, v):

@@ -114,6 +114,11 @@ class System:
         return np.array([s.total_charge for s in self.species])[self.species_of]
 
     @cached_property
+    def dipole(self):
+        """(N, 3) dipole of each body's charges about its centre of mass, body frame. [e nm]"""
+        return np.array([s.dipole for s in self.species])[self.species_of]
+
+    @cached_property
     def inertia(self):
         """(N, 3) principal moments. [u nm²]"""
         return np.array([s.inertia for s in self.species])[self.species_of]

@@ -6,6 +6,7 @@ unit of the file. Sums over bodies carry `per: box`. One entry here makes a new 
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 
@@ -30,6 +31,16 @@ class Instant:
     kinetic: tuple[float, float]  # translation, rotation [u nm²/ps²]
     light: object  # LightEnergies, or None without light
     beam: np.ndarray  # (3,) the axis of projections
+
+    @cached_property
+    def axes(self):
+        """(N, 3, 3) body axes in the laboratory, row k = axis k."""
+        return body_axes(self.state.orientation)
+
+    @cached_property
+    def cosines(self):
+        """cos of body z with the beam, of all bodies that have an orientation. [1]"""
+        return self.axes[self.system.freedom > 0, 2] @ self.beam
 
     @classmethod
     def of(cls, mover, state, beam=(0.0, 0.0, 1.0)):
@@ -77,25 +88,20 @@ def pressure(now):
 
 def total_dipole(now):
     """Σ μ + Σ q X of net charges at unwrapped centres, and rectified dipoles. (3,) [e nm]"""
-    dipole = permanent_dipole(now.system, now.state.orientation).sum(axis=0)
+    dipole = permanent_dipole(now.system, now.axes).sum(axis=0)
     dipole = dipole + now.system.charge @ now.state.position
     return dipole if now.light is None else dipole + now.light.rectified_dipole
 
 
-def _cosines(now):
-    """cos of body z with the beam, of all bodies that have an orientation."""
-    return body_axes(now.state.orientation[now.system.freedom > 0])[:, 2] @ now.beam
-
-
 def alignment(now):
     """⟨P2(cos θ)⟩ of body z with the beam; NaN for atoms only. [1]"""
-    c = _cosines(now)
+    c = now.cosines
     return 1.5 * np.mean(c * c) - 0.5 if len(c) else np.nan
 
 
 def orientation_along_beam(now):
     """⟨cos θ⟩ of body z with the beam; NaN for atoms only. [1]"""
-    c = _cosines(now)
+    c = now.cosines
     return np.mean(c) if len(c) else np.nan
 
 
