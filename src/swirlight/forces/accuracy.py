@@ -161,9 +161,12 @@ def choose_mesh(system, box, alpha):
 
 
 def mesh_points(box, spacing):
-    """Points per axis, sizes that transform fast, at most `spacing` apart. [1]"""
-    return tuple(max(scipy.fft.next_fast_len(int(np.ceil(edge / spacing - 1e-9)), real=True), WIDTH)
-                 for edge in box)
+    """Points per axis, sizes that transform fast, at most `spacing` apart, even along x. [1]"""
+    wanted = np.maximum(np.ceil(np.asarray(box) / spacing - 1e-9), WIDTH).astype(int)
+    x, y, z = (scipy.fft.next_fast_len(int(n), real=True) for n in wanted)
+    while x % 2:
+        x = scipy.fft.next_fast_len(x + 1, real=True)
+    return x, y, z
 
 
 def _coarsest(system, box, alpha, order):

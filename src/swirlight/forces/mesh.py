@@ -16,12 +16,14 @@ import numpy as np
 import scipy.fft
 
 from swirlight.compiled import CHUNKS, kernel, numba
+from swirlight.forces.kernels.calls import INNER
 from swirlight.forces.kernels.rows import distinct, filled, fused, put_row, row_at, total
+from swirlight.forces.meshwaves import WaveSpace, couple, density_to_waves, waves_to_potential
 from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli, spline_table
 from swirlight.units import COULOMB
 
 
-@kernel
+@kernel(**INNER)
 def _cell(place, edge, points):
     """Mesh cell along one axis, and the place inside it, 0 to 1."""
     u = place / edge
@@ -31,7 +33,7 @@ def _cell(place, edge, points):
     return (n if 0 <= n < points else 0), u - n
 
 
-@kernel
+@kernel(**INNER)
 def _count(first, last, place, box, mesh, count):
     """How many of some charges each plane of constant x has."""
     count[:] = 0
@@ -39,7 +41,7 @@ def _count(first, last, place, box, mesh, count):
         count[_cell(place[m, 0], box[0], mesh[0])[0]] += 1
 
 
-@kernel
+@kernel(**INNER)
 def _number(count, start):
     """Turn counts (chunks, planes) into the first number of each chunk in each plane."""
     number = 0
@@ -52,7 +54,7 @@ def _number(count, start):
     start[count.shape[1]] = number
 
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def _fill_splines(first, last, place, box, charge, mesh, taps, taylor, following, rank, base,
                   inside, weight):
     distinct()
@@ -76,7 +78,7 @@ def _fill_splines(first, last, place, box, charge, mesh, taps, taylor, following
             put_row(weight, (r, a, 0), row)
 
 
-@kernel(parallel=True)
+@kernel(parallel=True, **INNER)
 def _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight):
     """Splines of the charges, sorted by planes of constant x; along x times the charge.
 
@@ -95,7 +97,7 @@ def _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, insi
                       charge, mesh, taps, taylor, count[chunk], rank, base, inside, weight)
 
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def _fill_plane(x, mesh, start, taps, base, weight, plane):
     distinct()
     plane[:] = 0.0
@@ -118,16 +120,36 @@ def _fill_plane(x, mesh, start, taps, base, weight, plane):
             plane[y, z] += plane[mesh[1] + y, z]
     for y in range(mesh[1]):
         put_row(plane, (y, 0), fused(one, row_at(plane, (y, 0)), row_at(plane, (y, mesh[2]))))
+        put_row(plane, (y, mesh[2]), zero)
 
 
-@kernel(parallel=True)
-def _spread(mesh, start, taps, base, weight, density):
-    """Charge density on the mesh, one plane of constant x at a time."""
-    for x in numba.prange(mesh[0]):
-        _fill_plane(x, mesh, start, taps, base, weight, density[x])
+@kernel(parallel=True, **INNER)
+def _spread(mesh, start, taps, base, weight, settings, field, flat, waves, rooms):
+    """Charge density on the mesh, two planes of constant x at a time, and its waves."""
+    for x in numba.prange(mesh[0] // 2):
+        for plane in (2 * x, 2 * x + 1):
+            _fill_plane(plane, mesh, start, taps, base, weight, field[plane])
+        density_to_waves(np.int64(x), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
 
 
-@kernel(fast=True)
+@kernel(parallel=True, **INNER)
+def _couple(mesh, settings, coupling, spreads, energies, waves, rooms, sums):
+    for z in numba.prange(sums.shape[0]):
+        couple(np.int64(z), mesh, settings, coupling, spreads, energies, waves,
+               rooms[numba.get_thread_id()], sums)
+
+
+@kernel(parallel=True, **INNER)
+def _transform_back(mesh, settings, field, flat, waves, rooms):
+    """Potential on the mesh; past the end of each row its beginning again."""
+    for x in numba.prange(mesh[0] // 2):
+        waves_to_potential(np.int64(x), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
+        for plane in (2 * x, 2 * x + 1):
+            for y in range(mesh[1]):
+                put_row(field, (plane, y, mesh[2]), row_at(field, (plane, y, 0)))
+
+
+@kernel(fast=True, **INNER)
 def _read_field(first, last, mesh, scale, taps, taylor, charge, rank, base, inside, weight,
                 potential, slope, force):
     distinct()
@@ -159,7 +181,7 @@ def _read_field(first, last, mesh, scale, taps, taylor, charge, rank, base, insi
         force[m, 2] = -scale[2] * total(fused(row_at(slope, (2, 0)), z_sum, zero))
 
 
-@kernel(parallel=True)
+@kernel(parallel=True, **INNER)
 def _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, potential, force):
     """Force on every charge: minus its charge times the slope of the interpolated potential."""
     charges = charge.shape[0]
@@ -169,20 +191,14 @@ def _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, poten
                     taylor, charge, rank, base, inside, weight, potential, slope, force)
 
 
-@kernel(parallel=True)
-def _mode_sums(spectrum, coupling, spread_x, spread_y, spread_z, share, sums):
-    """Per plane of k_x: Σ U_k and Σ U_k [3 − 2(1 + k²/4α²)], U_k = ½ g |Q|²; share: how many k."""
-    for x in numba.prange(spectrum.shape[0]):
-        energy, virial = 0.0, 0.0
-        for y in range(spectrum.shape[1]):
-            for z in range(spectrum.shape[2]):
-                re, im = np.float64(spectrum[x, y, z].real), np.float64(spectrum[x, y, z].imag)
-                one = 0.5 * share[z] * coupling[x, y, z] * (re * re + im * im)
-                spread = spread_x[x] + spread_y[y] + spread_z[z]
-                energy += one
-                virial += one * (3.0 - 2.0 * (1.0 + spread))
-        sums[x, 0] = energy
-        sums[x, 1] = virial
+@kernel
+def _evaluate(place, box, energies, charge, mesh, taps, taylor, count, start, rank, base, inside,
+              weight, settings, field, flat, waves, rooms, scale, coupling, spreads, sums, force):
+    _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight)
+    _spread(mesh, start, taps, base, weight, settings, field, flat, waves, rooms)
+    _couple(mesh, settings, coupling, spreads, energies, waves, rooms, sums)
+    _transform_back(mesh, settings, field, flat, waves, rooms)
+    _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, field, force)
 
 
 class MeshEwald:
@@ -192,9 +208,9 @@ class MeshEwald:
     box : (3,) edges. [nm]
     alpha : splitting. [1/nm]
     order : points per axis that a charge is spread over, one of ORDERS.
-    mesh : (3,) points along each axis, each at least WIDTH.
+    mesh : (3,) points along each axis, at least WIDTH, products of 2, 3 and 5, even along x.
     dtype : of the mesh, np.float32 or np.float64.
-    Raises ValueError for another order or a coarser mesh.
+    Raises ValueError for another order or mesh.
     """
 
     def __init__(self, charge, box, alpha, order, mesh, dtype=np.float64):
@@ -204,34 +220,32 @@ class MeshEwald:
         self.charge = np.ascontiguousarray(charge, float)
         self.alpha, self.order, self.dtype = alpha, order, np.dtype(dtype)
         self.mesh = np.array(mesh, np.int64)
-        self._taps = tuple(range(order))  # a tuple, for the compiler to know how many
-        self._taylor = spline_table(order).astype(dtype)
-        count, (nx, ny, nz) = len(self.charge), self.mesh
-        self._count, self._start = np.empty((CHUNKS, nx), np.int32), np.empty(nx + 1, np.int32)
-        self._rank, self._base = np.empty(count, np.int32), np.empty((count, 3), np.int32)
-        self._inside = np.empty((count, 3), self.dtype)
-        self._weight = np.empty((count, 3, WIDTH), self.dtype)
-        self._field = np.zeros((nx, ny + WIDTH, nz + WIDTH), self.dtype)
-        self._share = np.full(nz // 2 + 1, 2.0)
-        self._share[0] = 1.0
-        if nz % 2 == 0:
-            self._share[-1] = 1.0
+        count, (nx, _, nz) = len(self.charge), self.mesh
+        taps = tuple(range(order))  # a tuple, for the compiler to know how many
+        space = WaveSpace(mesh, WIDTH, self.dtype, numba.config.NUMBA_NUM_THREADS)
+        self._settings = (
+            self.charge, self.mesh, taps, spline_table(order).astype(dtype),
+            np.empty((CHUNKS, nx), np.int32), np.empty(nx + 1, np.int32),
+            np.empty(count, np.int32), np.empty((count, 3), np.int32),
+            np.empty((count, 3), dtype), np.empty((count, 3, WIDTH), dtype),
+            space.settings, space.field, space.field.reshape(-1), space.waves.reshape(-1),
+            space.rooms)
+        self._sums = np.empty((nz // 2 + 1, 2))
         self._prepare(np.array(box, float))
 
     def _prepare(self, box):
         self._box = box
-        nx, ny, nz = self.mesh
-        waves = [scipy.fft.fftfreq(nx, 1 / nx), scipy.fft.fftfreq(ny, 1 / ny),
-                 scipy.fft.rfftfreq(nz, 1 / nz)]
-        self._spreads = [(2 * np.pi * n / edge) ** 2 / (4 * self.alpha**2)
-                         for n, edge in zip(waves, box, strict=True)]
-        bx, by, bz = (spline_moduli(int(n), self.order) for n in self.mesh)
-        sx, sy, sz = np.ix_(*self._spreads)
-        spread = sx + sy + sz
+        waves = [scipy.fft.fftfreq(n, 1 / n) for n in self.mesh]
+        spreads = [(2 * np.pi * n / edge) ** 2 / (4 * self.alpha**2)
+                   for n, edge in zip(waves, box, strict=True)]
+        moduli = [spline_moduli(int(n), self.order) for n in self.mesh]
+        x, z, y = np.ix_(*(spreads[a] for a in (0, 2, 1)))
+        spread = x + z + y
         spread[0, 0, 0] = np.inf  # no k = 0: conducting boundary
         coupling = np.pi * COULOMB / (box.prod() * self.alpha**2) * np.exp(-spread) / spread
-        coupling *= np.multiply.outer(np.outer(bx, by), bz[: nz // 2 + 1])
-        self._coupling = coupling.astype(self.dtype)
+        for part in np.ix_(*(moduli[a] for a in (0, 2, 1))):
+            coupling *= part
+        self._coupling = self.mesh / box, coupling.astype(self.dtype), tuple(spreads)
 
     def evaluate(self, place, box, force, energies=True):
         """Overwrite `force` (M, 3); return (energy, virial with all places scaled) or None.
@@ -240,23 +254,8 @@ class MeshEwald:
         """
         if not np.array_equal(box, self._box):
             self._prepare(np.array(box, float))
-        mesh, field, (_, ny, nz) = self.mesh, self._field, self.mesh
-        sorted_charges = self._rank, self._base, self._inside, self._weight
-        _sort(place, self._box, self.charge, mesh, self._taps, self._taylor, self._count,
-              self._start, *sorted_charges)
-        _spread(mesh, self._start, self._taps, self._base, self._weight, field)
-        spectrum = scipy.fft.rfftn(field[:, :ny, :nz], workers=1)
-        sums = self._sums(spectrum) if energies else None
-        spectrum *= self._coupling
-        field[:, :ny, :nz] = scipy.fft.irfftn(spectrum, tuple(mesh), norm="forward",
-                                            overwrite_x=True, workers=1)
-        field[:, :, nz:] = field[:, :, :WIDTH]
-        _gather(mesh, mesh / self._box, self._taps, self._taylor, self.charge, *sorted_charges,
-                field, force)
-        return sums
-
-    def _sums(self, spectrum):
-        sums = np.empty((self.mesh[0], 2))
-        _mode_sums(spectrum, self._coupling, *self._spreads, self._share, sums)
-        energy, virial = sums.sum(axis=0)
+        _evaluate(place, self._box, energies, *self._settings, *self._coupling, self._sums, force)
+        if not energies:
+            return None
+        energy, virial = self._sums.sum(axis=0)
         return float(energy), float(virial)
