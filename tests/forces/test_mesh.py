@@ -164,7 +164,8 @@ def test_a_not_a_number_is_seen():
     assert np.isnan(energy) and np.isnan(force).any()
 
 
-@pytest.mark.parametrize("order, mesh", [(3, (20, 20, 20)), (9, (20, 20, 20)), (5, (20, 6, 20))])
+@pytest.mark.parametrize("order, mesh", [(3, (20, 20, 20)), (9, (20, 20, 20)), (5, (20, 6, 20)),
+                                         (5, (15, 20, 20)), (5, (20, 14, 20))])
 def test_orders_and_meshes_that_cannot_be(order, mesh):
-    with pytest.raises(ValueError, match="order|points"):
+    with pytest.raises(ValueError, match="order|points|along x"):
         MeshEwald(np.ones(2), BOX, 4.0, order, mesh)
