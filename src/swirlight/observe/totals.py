@@ -6,14 +6,12 @@ unit of the file. Sums over bodies carry `per: box`. One entry here makes a new 
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from functools import cached_property
 
 import numpy as np
 
 from swirlight import units
 from swirlight.motion.energy import kinetic_energies, kinetic_temperature
-from swirlight.observe.vectors import permanent_dipole
-from swirlight.rotation import body_axes
+from swirlight.observe.sums import orientation_sums
 
 KJ = 1.0 / units.KJ_PER_MOL
 VOLTS = 1.0 / units.VOLT_PER_METRE
@@ -30,23 +28,18 @@ class Instant:
     state: object
     kinetic: tuple[float, float]  # translation, rotation [u nm²/ps²]
     light: object  # LightEnergies, or None without light
-    beam: np.ndarray  # (3,) the axis of projections
-
-    @cached_property
-    def axes(self):
-        """(N, 3, 3) body axes in the laboratory, row k = axis k."""
-        return body_axes(self.state.orientation)
-
-    @cached_property
-    def cosines(self):
-        """cos of body z with the beam, of all bodies that have an orientation. [1]"""
-        return self.axes[self.system.freedom > 0, 2] @ self.beam
+    dipole: np.ndarray  # (3,) Σ of the permanent ones [e nm]
+    cosine: tuple[float, float]  # ⟨cos θ⟩, ⟨cos² θ⟩ of body z with the beam; NaN for atoms only
 
     @classmethod
     def of(cls, mover, state, beam=(0.0, 0.0, 1.0)):
-        """The present step of a mover."""
-        kinetic = kinetic_energies(mover.system, state)
-        return cls(mover, state, kinetic, mover.load.light_sums, np.asarray(beam, float))
+        """The present step of a mover. beam : (3,) the axis of projections."""
+        system = mover.system
+        *dipole, first, second, count = orientation_sums(
+            state.orientation, system.freedom, system.dipole, np.asarray(beam, float))
+        cosine = (first / count, second / count) if count else (np.nan, np.nan)
+        return cls(mover, state, kinetic_energies(system, state), mover.load.light_sums,
+                   np.array(dipole), cosine)
 
     @property
     def system(self):
@@ -88,21 +81,18 @@ def pressure(now):
 
 def total_dipole(now):
     """Σ μ + Σ q X of net charges at unwrapped centres, and rectified dipoles. (3,) [e nm]"""
-    dipole = permanent_dipole(now.system, now.axes).sum(axis=0)
-    dipole = dipole + now.system.charge @ now.state.position
+    dipole = now.dipole + now.system.charge @ now.state.position
     return dipole if now.light is None else dipole + now.light.rectified_dipole
 
 
 def alignment(now):
     """⟨P2(cos θ)⟩ of body z with the beam; NaN for atoms only. [1]"""
-    c = now.cosines
-    return 1.5 * np.mean(c * c) - 0.5 if len(c) else np.nan
+    return 1.5 * now.cosine[1] - 0.5
 
 
 def orientation_along_beam(now):
     """⟨cos θ⟩ of body z with the beam; NaN for atoms only. [1]"""
-    c = now.cosines
-    return np.mean(c) if len(c) else np.nan
+    return now.cosine[0]
 
 
 def amplitude(now):
@@ -141,7 +131,7 @@ _ALL = (
     Total("potential_energy", lambda n: n.mover.load.energy, "kJ mol-1", KJ, (), BOX),
     Total("kinetic_energy_translation", lambda n: n.kinetic[0], "kJ mol-1", KJ, (), BOX),
     Total("kinetic_energy_rotation", lambda n: n.kinetic[1], "kJ mol-1", KJ, (), BOX),
-    Total("total_energy", lambda n: n.mover.total_energy(n.state), "kJ mol-1", KJ, (),
+    Total("total_energy", lambda n: sum(n.kinetic) + n.mover.load.energy, "kJ mol-1", KJ, (),
           {**BOX, "parts": "kinetic and potential, no field energy"}),
     Total("temperature", _temperature("total"), "K"),
     Total("temperature_translation", _temperature("translation"), "K"),

@@ -11,7 +11,7 @@ import numpy as np
 
 from swirlight import units
 from swirlight.motion.energy import angular_velocity
-from swirlight.rotation import body_axes
+from swirlight.rotation import body_axes, to_laboratory
 
 
 @dataclass(frozen=True)
@@ -56,14 +56,6 @@ def wrapped(position, box):
     return inside, (image + over).astype(np.int32)
 
 
-def permanent_dipole(system, axes):
-    """(N, 3) dipole of each body's charges about its centre of mass, laboratory. [e nm]
-
-    axes : (N, 3, 3) body axes in the laboratory, row k = axis k.
-    """
-    return np.einsum("...ki,...k->...i", axes, system.dipole)
-
-
 KJ = 1.0 / units.KJ_PER_MOL
 LABORATORY = {"frame": "laboratory"}
 
@@ -90,7 +82,7 @@ VECTORS = {
                lambda y, s, f: body_axes(s.orientation).copy(),
                {"convention": "row k is body axis k in the laboratory"}),
         Vector("dipole", (3,), "C m", 1.0 / units.COULOMB_METRE,
-               lambda y, s, f: permanent_dipole(y, body_axes(s.orientation)),
+               lambda y, s, f: to_laboratory(s.orientation, y.dipole),
                {**LABORATORY, "about": "the body's centre of mass", "part": "permanent"}),
     )
 }
