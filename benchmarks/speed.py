@@ -27,6 +27,7 @@ from timing import ROUNDS, Contender, in_turns, median_ms
 
 from swirlight import units
 from swirlight.compiled import numba
+from swirlight.errors import InputError
 
 QUICK_ROUNDS = GROWTH_ROUNDS = 5
 
@@ -115,8 +116,11 @@ def main():
         return
     if not 1 <= wanted.threads <= numba.config.NUMBA_NUM_THREADS:
         parser.error(f"--threads: 1 to {numba.config.NUMBA_NUM_THREADS} here")
-    row = one_row(wanted.system or "water", wanted.bodies, wanted.threads, wanted.precision,
-                  units.parse(wanted.cutoff, "length"))
+    try:
+        row = one_row(wanted.system or "water", wanted.bodies, wanted.threads, wanted.precision,
+                      units.parse_quantity(wanted.cutoff, "length"))
+    except InputError as error:
+        parser.error(str(error))
     if wanted.json:
         print(json.dumps(row, indent=1))
     else:
