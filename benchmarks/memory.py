@@ -18,13 +18,12 @@ from systems import CUTOFF, as_in_a_run
 from swirlight.state import State
 
 BODIES, SMALL, STEPS = 108000, 500, 30
-MESH_ARRAYS = 3.5  # charges, their transform, the potential, and half a mesh of coefficients
-HEAD = ("electrostatics", "empty process MB", "peak MB", "mesh MB", "kB/body without mesh")
+HEAD = ("electrostatics", "empty process MB", "peak MB", "mesh points", "bytes a point",
+        "mesh MB", "kB/body without mesh")
 NOTE = f"""\
 {BODIES} water, {STEPS} steps, one of them with energies. Empty: after the same with {SMALL} bodies,
-kernels loaded. mesh: its points, {MESH_ARRAYS:g} times (charge density, transform, potential, and
-half of it for the coefficients), in the precision it has; splines of the charges count to the
-bodies."""
+kernels loaded. mesh: the arrays that are kept of its points (charges or potential, transform,
+coefficients); what is needed in passing and the splines of the charges count to the bodies."""
 
 
 def peak():
@@ -38,14 +37,29 @@ def peak():
 
 
 def run(state, electrostatics):
-    """Some steps of a state; bytes of the mesh arrays."""
+    """Some steps of a state; points of the mesh and bytes of its arrays."""
     system = as_in_a_run("water", len(state.position), electrostatics=electrostatics)
     trajectory = Trajectory(system, state)
     for _ in range(STEPS):
         trajectory()
     trajectory.mover.advance(trajectory.state)
     mesh = trajectory.field.reciprocal
-    return 0 if mesh is None else float(MESH_ARRAYS * np.prod(mesh.mesh) * mesh.dtype.itemsize)
+    if mesh is None:
+        return 0, 0
+    points = int(np.prod(mesh.mesh))
+    # Whatever has a number for every second point or more, and not a row for each charge.
+    kept = {array.ctypes.data: array.nbytes for array in _arrays(list(vars(mesh).values()))
+            if array.size >= points // 2 and len(array) != len(mesh.charge)}
+    return points, sum(kept.values())
+
+
+def _arrays(things):
+    """All arrays in nested tuples and lists."""
+    for thing in things:
+        if isinstance(thing, np.ndarray):
+            yield thing
+        elif isinstance(thing, (tuple, list)):
+            yield from _arrays(thing)
 
 
 def rows():
@@ -57,13 +71,14 @@ def rows():
                      **{name: getattr(state, name) for name in State.ARRAYS})
         for method in ("mesh-ewald", "reaction-field"):
             _process(folder, method, SMALL)  # so that the one that counts compiles nothing
-            (empty, _), (most, mesh) = _process(folder, method, SMALL, BODIES)
-            yield [method, f"{empty / 1e6:.0f}", f"{most / 1e6:.0f}", f"{mesh / 1e6:.0f}",
+            (empty, *_), (most, points, mesh) = _process(folder, method, SMALL, BODIES)
+            yield [method, f"{empty / 1e6:.0f}", f"{most / 1e6:.0f}", points,
+                   f"{mesh / points:.1f}" if points else "-", f"{mesh / 1e6:.0f}",
                    f"{(most - empty - mesh) / BODIES / 1e3:.2f}"]
 
 
 def _process(folder, method, *sizes):
-    """For each size in turn, what a fresh process has had at most by then, and mesh arrays."""
+    """Of a fresh process, for each size in turn: peak so far, points and bytes of the mesh."""
     done = subprocess.run([sys.executable, __file__, folder, method, *map(str, sizes)],
                           check=True, stdout=subprocess.PIPE, text=True)
     return json.loads(done.stdout)
@@ -75,7 +90,7 @@ def main(folder, method, *sizes):
         with np.load(pathlib.Path(folder, f"{size}.npz")) as arrays:
             state = State(**arrays)
         mesh = run(state, method)
-        found.append([peak(), mesh])
+        found.append([peak(), *mesh])
     print(json.dumps(found))
 
 
