@@ -1,4 +1,4 @@
-"""Neighbour lists: the outer one against a k-d tree's pairs, and the inner one."""
+"""Neighbour lists against the pairs of a k-d tree."""
 
 import numpy as np
 from force_calls import ForceCall
@@ -9,29 +9,28 @@ from timing import Contender, in_turns, median_ms, ratio
 
 REACH = 1.0  # nm, between centres
 SIZES = (("water", 4000), ("water", 32000), ("atoms", 4000), ("atoms", 32000))
-HEAD = ("system", "bodies", "outer ms", "tree ms", "tree/outer", "inner ms", "force call ms")
+HEAD = ("system", "bodies", "list ms", "tree ms", "tree/list", "in use ms", "force call ms")
 NOTE = f"""\
-outer: sorting the bodies into cells and listing, for each, all bodies with centres within
-{REACH} nm, both ways; the cutoff is chosen so that with the sites' reach and the skin it comes to
-that. tree: building a periodic k-d tree of the centres and asking it for the pairs within
-{REACH} nm, as an array. inner: choosing from an outer list made for the {CUTOFF} nm cutoff those
-with any two sites within cutoff and skin; a few of the force calls given beside it go by before
-it is due again. One thread, mixed precision."""
+list: making it anew, from sorting the bodies to a full row for each, both ways, of all bodies
+with any two sites within cutoff and skin; the cutoff is chosen so that centres reach {REACH} nm.
+tree: building a periodic k-d tree of the centres and asking it for the pairs within
+{REACH} nm, as an array. in use: making the list for the {CUTOFF} nm cutoff; a few of the force
+calls given beside it go by before it is due again. One thread, mixed precision."""
 
 
-def outer_list(name, bodies, state):
-    """The call that makes an outer list that reaches REACH."""
+def list_of_reach(name, bodies, state):
+    """The call that makes a list of bodies whose centres are within REACH."""
     def reach_of(cutoff):
         call = ForceCall(with_plain_cutoff(name, bodies, cutoff=cutoff), state)
         call()
         near = call.pairs.neighbours
-        return near, cutoff + 2 * near.radius + near.outer_skin
+        return near, cutoff + 2 * near.radius + near.skin
 
     trial = CUTOFF - 0.3
     near, reach = reach_of(trial + REACH - reach_of(trial)[1])
     if not np.isclose(reach, REACH):
-        raise RuntimeError(f"the outer list reaches {reach:.4f} nm instead of {REACH} nm")
-    return lambda: near.make_outer(state.position, state.box)
+        raise RuntimeError(f"the list reaches {reach:.4f} nm instead of {REACH} nm")
+    return lambda: near.make(state.position, state.orientation, state.box)
 
 
 def table(quick, rounds):
@@ -41,14 +40,13 @@ def table(quick, rounds):
         force_call = ForceCall(with_plain_cutoff(name, bodies), state)
         force_call()
         times = in_turns({
-            "outer": Contender(outer_list(name, bodies, state)),
+            "list": Contender(list_of_reach(name, bodies, state)),
             "tree": Contender(lambda place=place, box=state.box: cKDTree(
                 place, boxsize=box).query_pairs(REACH, output_type="ndarray")),
-            "inner": Contender(lambda force_call=force_call, state=state:
-                               force_call.pairs.neighbours.choose_inner(state.position,
-                                                                        state.orientation)),
+            "used": Contender(lambda near=force_call.pairs.neighbours, state=state:
+                              near.make(state.position, state.orientation, state.box)),
             "call": Contender(force_call),
         }, rounds)
-        yield [name, bodies, f"{median_ms(times['outer']):.2f}", f"{median_ms(times['tree']):.1f}",
-               f"{ratio(times['tree'], times['outer']):.1f}", f"{median_ms(times['inner']):.2f}",
+        yield [name, bodies, f"{median_ms(times['list']):.2f}", f"{median_ms(times['tree']):.1f}",
+               f"{ratio(times['tree'], times['list']):.1f}", f"{median_ms(times['used']):.2f}",
                f"{median_ms(times['call']):.2f}"]

@@ -45,8 +45,7 @@ def one_row(name, bodies, threads, precision, cutoff):
     near = call.pairs.neighbours
     times = in_turns({
         "call": Contender(call, threads),
-        "inner": Contender(lambda: near.choose_inner(state.position, state.orientation), threads),
-        "outer": Contender(lambda: near.make_outer(state.position, state.box), threads),
+        "list": Contender(lambda: near.make(state.position, state.orientation, state.box), threads),
     })
     walk = in_turns({"step": Contender(steps.Trajectory(system, state).settled(), threads)},
                     seconds=0.3, least=steps.BLOCK, average=np.mean)
@@ -54,7 +53,7 @@ def one_row(name, bodies, threads, precision, cutoff):
     return dict(system=name, bodies=bodies, threads=threads, precision=precision,
                 cutoff_nm=cutoff, cutoff_form=system.interactions.cutoff_form,
                 ms_per_force_call=ms, useful_pairs=pairs, ns_per_useful_pair=1e6 * ms / pairs,
-                ms_list=median_ms(times["inner"]), ms_cells=median_ms(times["outer"]),
+                ms_list=median_ms(times["list"]),
                 steps_per_second=float(1 / np.median(walk["step"])))
 
 

@@ -72,19 +72,13 @@ def test_list_keeps_up_with_motion(box):
     system, position, orientation, box = sample([TWO, ATOM], [70, 20], box, precision="double")
     pairs = PairForces(system, NONE, box)
     rng = np.random.default_rng(7)
-    kept = outer = 0
     for _ in range(60):
-        before = pairs.neighbours.__dict__.get("inner_position"), pairs.neighbours.__dict__.get(
-            "outer_position")
         got = forces(pairs, position, orientation, box)
-        kept += before[0] is pairs.neighbours.inner_position
-        outer += before[1] is not pairs.neighbours.outer_position
         expected = forces(PairForces(system, NONE, box), position, orientation, box)
         assert relative(got[0], expected[0]) < 1e-12
         assert relative(got[1], expected[1]) < 1e-12
         position, orientation = walk(rng, position, orientation, 0.006)
-    assert kept > 10  # the list was really used again
-    assert outer > 2  # and made anew
+    assert 2 < pairs.neighbours.made < 50  # the list was made anew, and really used again
 
 
 def test_restored_list_gives_the_same_bits():

@@ -16,7 +16,8 @@ from swirlight.forces import laws
 from swirlight.forces.box import check_box
 from swirlight.forces.kernels.generated import module_of
 from swirlight.forces.kernels.source import Pattern, pair_source
-from swirlight.forces.neighbours import Neighbours, interacting_kinds
+from swirlight.forces.kinds import interacting_kinds
+from swirlight.forces.neighbours import Neighbours
 
 # Of the polynomials that replace erfc, relative to their largest value: of the order of the
 # rounding of the sums they enter.
@@ -144,7 +145,9 @@ class PairForces:
         check_box(box, self.system.interactions.cutoff, self.system.bodies)
         near = self.neighbours
         near.update(position, orientation, box)
-        force[:], torque[:], self._sums[:] = 0.0, 0.0, 0.0
+        force[:], torque[:] = 0.0, 0.0
+        if energies:
+            self._sums[:] = 0.0
         for call in self.calls:
             own, other = near.kinds[call.own], near.kinds[call.other]
             rows = near.rows[call.own, call.other]

@@ -4,7 +4,8 @@
 loop over neighbours becomes 32-bit gathers. `streamlined` promises the compiler that the
 arrays a function gets do not overlap where it writes, and asks for the widest vectors in
 its first innermost loop.
-`pick` copies those of 16 integers that pass a test: newer processors do it in one instruction.
+`pick` copies those of 16 integers whose values are negative: newer processors do it in one
+instruction, and for others the plain form is compiled.
 Uncompiled (NUMBA_DISABLE_JIT=1) the plain forms at the end stand in.
 """
 
@@ -12,6 +13,8 @@ import numba
 from llvmlite import ir
 from numba.core import cgutils, types
 from numba.extending import intrinsic
+
+from swirlight.compiled import kernel
 
 # Wide vectors on processors that would rather not, a stack that holds them aligned, and no
 # inlining, which would lose both.
@@ -23,18 +26,20 @@ def _at(typing_context, array, offset, index):
     def codegen(context, builder, signature, args):
         data = context.make_array(signature.args[0])(context, builder, args[0]).data
         start = builder.gep(data, [args[1]])
-        wide = builder.sext(args[2], context.get_value_type(types.intp))
+        wide = context.cast(builder, args[2], signature.args[2], types.intp)
         return builder.load(builder.gep(start, [wide]))
 
-    return array.dtype(array, types.intp, types.int32), codegen
+    return array.dtype(array, types.intp, index), codegen
 
 
 def _loop_hint(module, width):
     """Metadata that asks for `width` lanes and one copy of the loop body."""
     width = module.add_metadata(["llvm.loop.vectorize.width", ir.Constant(ir.IntType(32), width)])
     single = module.add_metadata(["llvm.loop.interleave.count", ir.Constant(ir.IntType(32), 1)])
-    loop = module.add_metadata([width, single])
-    loop.operands = (loop, width, single)  # a loop is named by a node that begins with itself
+    rolled = module.add_metadata(["llvm.loop.unroll.disable"])
+    loop = module.add_metadata([width, single, rolled])
+    # A loop is named by a node that begins with itself.
+    loop.operands = (loop, width, single, rolled)
     return loop
 
 
@@ -77,42 +82,45 @@ def _streamlining(lanes):
 
 
 @intrinsic
-def _pick(typing_context, source, start, count, value, low, high, factor, target, place):
+def _pick(typing_context, source, start, value, value_start, target, place):
     def codegen(context, builder, signature, args):
         kinds = signature.args
-        data = [context.make_array(kinds[k])(context, builder, args[k]).data for k in (0, 3, 7)]
-        integer, real = ir.IntType(32), context.get_value_type(kinds[3].dtype)
+        data = [context.make_array(kinds[k])(context, builder, args[k]).data for k in (0, 2, 4)]
+        integer, real = ir.IntType(32), context.get_value_type(kinds[2].dtype)
 
-        def lanes(kind, scalar):
-            first = builder.insert_element(ir.Constant(ir.VectorType(kind, 16), ir.Undefined),
-                                           scalar, ir.Constant(integer, 0))
-            return builder.shuffle_vector(first, first,
-                                          ir.Constant(ir.VectorType(integer, 16), [0] * 16))
-
-        def load(pointer, kind):
-            pointer = builder.gep(pointer, [args[1]])
+        def load(pointer, first, kind):
+            pointer = builder.gep(pointer, [first])
             pointer = builder.bitcast(pointer, ir.VectorType(kind, 16).as_pointer())
             return builder.load(pointer, align=4)
 
-        left = builder.trunc(builder.sub(args[2], args[1]), integer)
-        order = ir.Constant(ir.VectorType(integer, 16), list(range(16)))
-        values = load(data[1], real)
-        chosen = builder.icmp_signed("<", order, lanes(integer, left))
-        chosen = builder.and_(chosen, builder.fcmp_ordered(">=", values, lanes(real, args[4])))
-        chosen = builder.and_(chosen, builder.fcmp_ordered("<", values, lanes(real, args[5])))
-        numbers = builder.mul(load(data[0], integer), lanes(integer, args[6]))
-        spot = builder.gep(data[2], [args[8]])
+        nought = ir.Constant(ir.VectorType(real, 16), [0.0] * 16)
+        chosen = builder.fcmp_ordered("<", load(data[1], args[3], real), nought)
+        numbers = load(data[0], args[1], integer)
+        spot = builder.gep(data[2], [args[5]])
         store = cgutils.get_or_insert_function(
             builder.module,
             ir.FunctionType(ir.VoidType(), [numbers.type, spot.type, chosen.type]),
             "llvm.masked.compressstore.v16i32")
         builder.call(store, [numbers, spot, chosen])
         taken = builder.ctpop(builder.bitcast(chosen, ir.IntType(16)))
-        return builder.add(args[8], builder.zext(taken, context.get_value_type(types.intp)))
+        return builder.add(args[5], builder.zext(taken, context.get_value_type(types.intp)))
 
-    real = value.dtype
-    arguments = (source, types.intp, types.intp, value, real, real, types.int32, target, types.intp)
-    return types.intp(*arguments), codegen
+    return types.intp(source, types.intp, value, types.intp, target, types.intp), codegen
+
+
+def _plain_pick(source, start, value, value_start, target, place):
+    for k in range(16):
+        target[place] = source[start + k]  # overwritten unless it counts
+        place += value[value_start + k] < 0
+    return place
+
+
+def _compresses():
+    """Whether the processor packs those lanes of a vector that pass a test."""
+    features = numba.config.CPU_FEATURES
+    if features is None:
+        features = numba.core.codegen.get_host_cpu_features()
+    return "+avx512f" in features.split(",")
 
 
 if numba.config.DISABLE_JIT:
@@ -127,12 +135,8 @@ if numba.config.DISABLE_JIT:
 
     streamlined8 = streamlined16
 
-    def pick(source, start, count, value, low, high, factor, target, place):
-        for k in range(start, min(start + 16, count)):
-            if low <= value[k] < high:
-                target[place] = source[k] * factor
-                place += 1
-        return place
+    pick = _plain_pick
 else:
-    at, fused, pick = _at, _fused, _pick
+    at, fused = _at, _fused
+    pick = _pick if _compresses() else kernel(_plain_pick)
     streamlined8, streamlined16 = _streamlining(8), _streamlining(16)
