@@ -78,25 +78,6 @@ def _fill_splines(first, last, place, box, charge, mesh, taps, taylor, following
             put_row(weight, (r, a, 0), row)
 
 
-@kernel(parallel=True, **INNER)
-def _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight):
-    """Splines of the charges, sorted by planes of constant x; along x times the charge.
-
-    count : (CHUNKS, n_x) and start : (n_x + 1,) are overwritten; plane x has the charges
-        start[x] … start[x + 1] − 1, in the order in which they were given.
-    rank, base, inside, weight : the number of each, its lowest mesh point, its place in the
-        cell, from the middle, and its splines.
-    """
-    charges = charge.shape[0]
-    for chunk in numba.prange(CHUNKS):
-        _count(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, place, box, mesh,
-               count[chunk])
-    _number(count, start)
-    for chunk in numba.prange(CHUNKS):
-        _fill_splines(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, place, box,
-                      charge, mesh, taps, taylor, count[chunk], rank, base, inside, weight)
-
-
 @kernel(fast=True, **INNER)
 def _fill_plane(x, mesh, start, taps, base, weight, plane):
     distinct()
@@ -121,32 +102,6 @@ def _fill_plane(x, mesh, start, taps, base, weight, plane):
     for y in range(mesh[1]):
         put_row(plane, (y, 0), fused(one, row_at(plane, (y, 0)), row_at(plane, (y, mesh[2]))))
         put_row(plane, (y, mesh[2]), zero)
-
-
-@kernel(parallel=True, **INNER)
-def _spread(mesh, start, taps, base, weight, settings, field, flat, waves, rooms):
-    """Charge density on the mesh, two planes of constant x at a time, and its waves."""
-    for x in numba.prange(mesh[0] // 2):
-        for plane in (2 * x, 2 * x + 1):
-            _fill_plane(plane, mesh, start, taps, base, weight, field[plane])
-        density_to_waves(np.int64(x), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
-
-
-@kernel(parallel=True, **INNER)
-def _couple(mesh, settings, coupling, spreads, energies, waves, rooms, sums):
-    for z in numba.prange(sums.shape[0]):
-        couple(np.int64(z), mesh, settings, coupling, spreads, energies, waves,
-               rooms[numba.get_thread_id()], sums)
-
-
-@kernel(parallel=True, **INNER)
-def _transform_back(mesh, settings, field, flat, waves, rooms):
-    """Potential on the mesh; past the end of each row its beginning again."""
-    for x in numba.prange(mesh[0] // 2):
-        waves_to_potential(np.int64(x), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
-        for plane in (2 * x, 2 * x + 1):
-            for y in range(mesh[1]):
-                put_row(field, (plane, y, mesh[2]), row_at(field, (plane, y, 0)))
 
 
 @kernel(fast=True, **INNER)
@@ -181,24 +136,32 @@ def _read_field(first, last, mesh, scale, taps, taylor, charge, rank, base, insi
         force[m, 2] = -scale[2] * total(fused(row_at(slope, (2, 0)), z_sum, zero))
 
 
-@kernel(parallel=True, **INNER)
-def _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, potential, force):
-    """Force on every charge: minus its charge times the slope of the interpolated potential."""
-    charges = charge.shape[0]
-    for chunk in numba.prange(CHUNKS):
-        slope = np.empty((3, WIDTH), potential.dtype)
-        _read_field(charges * chunk // CHUNKS, charges * (chunk + 1) // CHUNKS, mesh, scale, taps,
-                    taylor, charge, rank, base, inside, weight, potential, slope, force)
-
-
-@kernel
+@kernel(parallel=True)
 def _evaluate(place, box, energies, charge, mesh, taps, taylor, count, start, rank, base, inside,
               weight, settings, field, flat, waves, rooms, scale, coupling, spreads, sums, force):
-    _sort(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight)
-    _spread(mesh, start, taps, base, weight, settings, field, flat, waves, rooms)
-    _couple(mesh, settings, coupling, spreads, energies, waves, rooms, sums)
-    _transform_back(mesh, settings, field, flat, waves, rooms)
-    _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, field, force)
+    charges = charge.shape[0]
+    for n in numba.prange(CHUNKS):  # sort
+        _count(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, mesh, count[n])
+    _number(count, start)
+    for n in numba.prange(CHUNKS):
+        _fill_splines(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, charge,
+                      mesh, taps, taylor, count[n], rank, base, inside, weight)
+    for n in numba.prange(mesh[0] // 2):  # charge density, two planes at a time, and its waves
+        for x in (2 * n, 2 * n + 1):
+            _fill_plane(x, mesh, start, taps, base, weight, field[x])
+        density_to_waves(np.int64(n), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
+    for n in numba.prange(sums.shape[0]):
+        couple(np.int64(n), mesh, settings, coupling, spreads, energies, waves,
+               rooms[numba.get_thread_id()], sums)
+    for n in numba.prange(mesh[0] // 2):  # potential; past the end of a row its beginning again
+        waves_to_potential(np.int64(n), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
+        for x in (2 * n, 2 * n + 1):
+            for y in range(mesh[1]):
+                put_row(field, (x, y, mesh[2]), row_at(field, (x, y, 0)))
+    for n in numba.prange(CHUNKS):
+        _read_field(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, mesh, scale, taps, taylor,
+                    charge, rank, base, inside, weight, field, np.empty((3, WIDTH), field.dtype),
+                    force)
 
 
 class MeshEwald:
