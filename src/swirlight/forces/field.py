@@ -58,8 +58,10 @@ class ForceField:
         self.law = coulomb_law(system, box)
         self.pairs = PairForces(system, self.law, box)
         self.reciprocal = self._reciprocal(box) if self.law.kind == "ewald" else None
-        self._body = np.repeat(np.arange(system.bodies), np.diff(system.site_start))[self._charged]
-        self._lever = np.empty((int(system.site_start[-1]), 3))
+        self._type = system.type_of_site[self._charged].astype(np.int32)
+        # Body i has charges first[i] … first[i + 1] − 1; none where only pairs count.
+        self._first = np.searchsorted(self._charged, system.site_start).astype(np.int32)
+        self._no_charges = np.zeros_like(self._first)
         self._place, self._push = np.empty((2, len(self._charged), 3))
         self._force, self._torque = np.empty((2, system.bodies, 3))
         # The part of the wave vectors has rows of its own where it does not act at every step.
@@ -96,23 +98,23 @@ class ForceField:
         """
         force, torque = self._force, self._torque
         sums = self.pairs.evaluate(position, orientation, box, force, torque, energies)
-        parts, waves, lever_work = [(force, torque)], None, 0.0
+        parts, waves = [(self._no_charges, force, torque)], None
         if self.reciprocal is not None and (mesh or energies):
-            if self._apart is not None:
+            if self._apart is None:
+                parts = [(self._first, force, torque)]
+            else:
                 self._apart[:] = 0.0
-                parts.append(self._apart)
-            sites.place_sites(self.system, position, orientation, self._lever)
-            sites.choose_places(position, self._lever, self._charged, self._body, self._place)
+                parts.append((self._first, *self._apart))
+            sites.place_charges(position, orientation, self._first, self._type,
+                                self.system.type_position, self._place)
             waves = self.reciprocal.evaluate(self._place, box, self._push, energies)
-            lever_work = sites.add_to_bodies(self._push, self._lever, self._charged, self._body,
-                                             *parts[-1])
-        for part_force, part_torque in parts:
-            sites.restrict_torques(orientation, self._freedom, part_torque)
-            if self._drifts:
-                sites.remove_mean_force(self.system.mass, part_force)
+        for part in parts:
+            lever_work = sites.add_to_bodies(position, orientation, self._freedom,
+                                             self.system.mass, self._drifts, self._place,
+                                             self._push, *part)
         found = Forces(force, torque)
         if len(parts) > 1:
-            found.mesh_force, found.mesh_torque = parts[1]
+            found.mesh_force, found.mesh_torque = self._apart
             force += found.mesh_force
             torque += found.mesh_torque
         if energies:
