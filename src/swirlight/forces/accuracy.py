@@ -26,7 +26,7 @@ NEIGHBOURS = 12  # of a body in a dense liquid
 PROXY = 32  # points per axis that the error of a mesh is summed over
 # ns per charge, per charge and spline point, and per mesh point and log2 of their number: from
 # timings on one core, only to choose among meshes that are all good enough.
-COST = (75.0, 3.2, 0.5)
+COST = (20.0, 1.6, 0.25)
 
 
 def typical_force(system, box):

@@ -208,6 +208,8 @@ class MeshEwald:
         coupling = np.pi * COULOMB / (box.prod() * self.alpha**2) * np.exp(-spread) / spread
         for part in np.ix_(*(moduli[a] for a in (0, 2, 1))):
             coupling *= part
+        # What rounding hides is left out: numbers near the smallest that floats hold are slow.
+        coupling[coupling < 1e-6 * np.finfo(self.dtype).eps * coupling.max()] = 0.0
         self._coupling = self.mesh / box, coupling.astype(self.dtype), tuple(spreads)
 
     def evaluate(self, place, box, force, energies=True):

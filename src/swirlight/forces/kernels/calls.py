@@ -48,8 +48,12 @@ else:
 
     def callback(signature, function):
         """Address of a function of pointers and whole numbers that returns nothing."""
-        compiled = numba.cfunc(signature, cache=True, fastmath=FAST, error_model="numpy")
-        _kept.append(compiled(function))
+        settings = {"fastmath": FAST, "error_model": "numpy"}
+        try:
+            compiled = numba.cfunc(signature, cache=True, **settings)(function)
+        except RuntimeError:  # nowhere to keep a cache, of which `kernel` has warned
+            compiled = numba.cfunc(signature, **settings)(function)
+        _kept.append(compiled)
         return _kept[-1].address
 
     call_address, array_at = _call_address, numba.carray

@@ -126,10 +126,9 @@ def _pass_5(source, at, target, to, turns, parts, stride, width, lanes):
 def _transform(source, target, spare, factors, turns, passes, count, inverse, start, step,
                imaginary, to_start, to_step, to_imaginary, room, other, width, lanes):
     """`transform` with every number by itself, as one compiled function is called by another."""
-    # The rooms in between are far larger than one number; their sizes are not looked at.
-    source, target = array_at(source, 1), array_at(target, 1)
-    spare, turns = array_at(spare, 1), array_at(turns, 1)
-    factors = array_at(factors, passes)
+    # Rows are read and written without a look at the sizes of the first three.
+    source, target, spare = array_at(source, 1), array_at(target, 1), array_at(spare, 1)
+    factors, turns = array_at(factors, passes), array_at(turns, count)
     if inverse:
         start, imaginary = start + imaginary, -imaginary
         to_start, to_imaginary = to_start + to_imaginary, -to_imaginary
