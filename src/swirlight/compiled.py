@@ -20,6 +20,9 @@ KERNEL_FILES = ("compiled.py", "rotation_kernels.py")  # outside of them
 # and add the parts in order: the same bits on any machine.
 CHUNKS = 32
 
+# Settings of a kernel that only other kernels call: without a door for Python it compiles faster.
+INNER = {"no_cpython_wrapper": True, "no_cfunc_wrapper": True}
+
 
 def _source_hash():
     root = pathlib.Path(__file__).parent

@@ -156,18 +156,6 @@ def test_a_charge_on_the_edge_of_the_box():
     np.testing.assert_allclose(again, force, atol=1e-10 * rms(force))
 
 
-def test_a_fine_mesh_of_floats_meets_no_numbers_too_small_for_them():
-    """They make arithmetic ten times slower; left out is only what rounding hides anyway."""
-    charge, place = charges(60)
-    found = np.empty((2, *place.shape))
-    for force, dtype in zip(found, (np.float32, np.float64), strict=True):
-        field = MeshEwald(charge, BOX, 4.0, 5, (64, 64, 64), dtype)
-        field.evaluate(place, BOX, force)
-        coupling = field._coupling[1]
-        assert coupling[coupling > 0].min() > 1e6 * np.finfo(np.float32).tiny
-    assert rms(found[0] - found[1]) < 2e-6 * rms(found[1])
-
-
 def test_a_not_a_number_is_seen():
     charge, place = charges(10)
     place[4, 1] = np.nan
@@ -176,8 +164,7 @@ def test_a_not_a_number_is_seen():
     assert np.isnan(energy) and np.isnan(force).any()
 
 
-@pytest.mark.parametrize("order, mesh", [(3, (20, 20, 20)), (9, (20, 20, 20)), (5, (20, 6, 20)),
-                                         (5, (15, 20, 20)), (5, (20, 14, 20))])
+@pytest.mark.parametrize("order, mesh", [(3, (20, 20, 20)), (9, (20, 20, 20)), (5, (20, 6, 20))])
 def test_orders_and_meshes_that_cannot_be(order, mesh):
-    with pytest.raises(ValueError, match="order|points|along x"):
+    with pytest.raises(ValueError, match="order|points"):
         MeshEwald(np.ones(2), BOX, 4.0, order, mesh)

@@ -26,7 +26,7 @@ NEIGHBOURS = 12  # of a body in a dense liquid
 PROXY = 32  # points per axis that the error of a mesh is summed over
 # ns per charge, per charge and spline point, and per mesh point and log2 of their number: from
 # timings on one core, only to choose among meshes that are all good enough.
-COST = (20.0, 1.6, 0.25)
+COST = (36.0, 1.2, 0.4)
 
 
 def typical_force(system, box):
@@ -161,12 +161,9 @@ def choose_mesh(system, box, alpha):
 
 
 def mesh_points(box, spacing):
-    """Points per axis, sizes that transform fast, at most `spacing` apart, even along x. [1]"""
-    wanted = np.maximum(np.ceil(np.asarray(box) / spacing - 1e-9), WIDTH).astype(int)
-    x, y, z = (scipy.fft.next_fast_len(int(n), real=True) for n in wanted)
-    while x % 2:
-        x = scipy.fft.next_fast_len(x + 1, real=True)
-    return x, y, z
+    """Points per axis, sizes that transform fast, at most `spacing` apart. [1]"""
+    return tuple(max(scipy.fft.next_fast_len(int(np.ceil(edge / spacing - 1e-9)), real=True), WIDTH)
+                 for edge in box)
 
 
 def _coarsest(system, box, alpha, order):

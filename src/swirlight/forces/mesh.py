@@ -7,6 +7,7 @@ Units   nm, ps, u, e; energy u nm²/ps².
 Layout  a spline takes a row of WIDTH numbers, zeros behind its p weights, and the mesh has WIDTH
         further points along y and z: one row is one vector operation and never wraps. The
         weights are polynomials in the place inside a cell, all of a row evaluated together.
+        The transforms are scipy's, on one thread: they gain nothing from more.
 Bits    charges are sorted by planes of constant x, and a plane (when spreading) or a charge
         (when gathering) is written by one thread in fixed order: any number of threads gives
         the same bits.
@@ -15,10 +16,8 @@ Bits    charges are sorted by planes of constant x, and a plane (when spreading)
 import numpy as np
 import scipy.fft
 
-from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.kernels.calls import INNER
+from swirlight.compiled import CHUNKS, INNER, kernel, numba
 from swirlight.forces.kernels.rows import distinct, filled, fused, put_row, row_at, total
-from swirlight.forces.meshwaves import WaveSpace, couple, density_to_waves, waves_to_potential
 from swirlight.forces.splines import ORDERS, WIDTH, spline_moduli, spline_table
 from swirlight.units import COULOMB
 
@@ -137,31 +136,56 @@ def _read_field(first, last, mesh, scale, taps, taylor, charge, rank, base, insi
 
 
 @kernel(parallel=True)
-def _evaluate(place, box, energies, charge, mesh, taps, taylor, count, start, rank, base, inside,
-              weight, settings, field, flat, waves, rooms, scale, coupling, spreads, sums, force):
+def _spread(place, box, charge, mesh, taps, taylor, count, start, rank, base, inside, weight,
+            field):
+    """Charge density on the mesh."""
     charges = charge.shape[0]
-    for n in numba.prange(CHUNKS):  # sort
+    for n in numba.prange(CHUNKS):
         _count(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, mesh, count[n])
     _number(count, start)
     for n in numba.prange(CHUNKS):
         _fill_splines(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, charge,
                       mesh, taps, taylor, count[n], rank, base, inside, weight)
-    for n in numba.prange(mesh[0] // 2):  # charge density, two planes at a time, and its waves
-        for x in (2 * n, 2 * n + 1):
-            _fill_plane(x, mesh, start, taps, base, weight, field[x])
-        density_to_waves(np.int64(n), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
-    for n in numba.prange(sums.shape[0]):
-        couple(np.int64(n), mesh, settings, coupling, spreads, energies, waves,
-               rooms[numba.get_thread_id()], sums)
-    for n in numba.prange(mesh[0] // 2):  # potential; past the end of a row its beginning again
-        waves_to_potential(np.int64(n), mesh, settings, flat, waves, rooms[numba.get_thread_id()])
-        for x in (2 * n, 2 * n + 1):
-            for y in range(mesh[1]):
-                put_row(field, (x, y, mesh[2]), row_at(field, (x, y, 0)))
+    for x in numba.prange(mesh[0]):
+        _fill_plane(x, mesh, start, taps, base, weight, field[x])
+
+
+@kernel(**INNER)
+def _copy_plane(potential, mesh, plane):
+    """A plane of the potential, and past the end of each row its beginning again."""
+    for y in range(mesh[1]):
+        for z in range(mesh[2]):
+            plane[y, z] = potential[y, z]
+        for z in range(WIDTH):
+            plane[y, mesh[2] + z] = potential[y, z]
+
+
+@kernel(parallel=True)
+def _gather(potential, mesh, scale, taps, taylor, charge, rank, base, inside, weight, field, force):
+    """Force on every charge: minus its charge times the slope of the interpolated potential."""
+    charges = charge.shape[0]
+    for x in numba.prange(mesh[0]):
+        _copy_plane(potential[x], mesh, field[x])
     for n in numba.prange(CHUNKS):
         _read_field(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, mesh, scale, taps, taylor,
                     charge, rank, base, inside, weight, field, np.empty((3, WIDTH), field.dtype),
                     force)
+
+
+@kernel(parallel=True)
+def _mode_sums(spectrum, coupling, spread_x, spread_y, spread_z, share, sums):
+    """Per plane of k_x: Σ U_k and Σ U_k [3 − 2(1 + k²/4α²)], U_k = ½ g |Q|²; share: how many k."""
+    for x in numba.prange(spectrum.shape[0]):
+        energy, virial = 0.0, 0.0
+        for y in range(spectrum.shape[1]):
+            for z in range(spectrum.shape[2]):
+                re, im = np.float64(spectrum[x, y, z].real), np.float64(spectrum[x, y, z].imag)
+                one = 0.5 * share[z] * coupling[x, y, z] * (re * re + im * im)
+                spread = spread_x[x] + spread_y[y] + spread_z[z]
+                energy += one
+                virial += one * (3.0 - 2.0 * (1.0 + spread))
+        sums[x, 0] = energy
+        sums[x, 1] = virial
 
 
 class MeshEwald:
@@ -171,9 +195,9 @@ class MeshEwald:
     box : (3,) edges. [nm]
     alpha : splitting. [1/nm]
     order : points per axis that a charge is spread over, one of ORDERS.
-    mesh : (3,) points along each axis, at least WIDTH, products of 2, 3 and 5, even along x.
+    mesh : (3,) points along each axis, each at least WIDTH.
     dtype : of the mesh, np.float32 or np.float64.
-    Raises ValueError for another order or mesh.
+    Raises ValueError for another order or a coarser mesh.
     """
 
     def __init__(self, charge, box, alpha, order, mesh, dtype=np.float64):
@@ -183,34 +207,39 @@ class MeshEwald:
         self.charge = np.ascontiguousarray(charge, float)
         self.alpha, self.order, self.dtype = alpha, order, np.dtype(dtype)
         self.mesh = np.array(mesh, np.int64)
-        count, (nx, _, nz) = len(self.charge), self.mesh
-        taps = tuple(range(order))  # a tuple, for the compiler to know how many
-        space = WaveSpace(mesh, WIDTH, self.dtype, numba.config.NUMBA_NUM_THREADS)
-        self._settings = (
-            self.charge, self.mesh, taps, spline_table(order).astype(dtype),
-            np.empty((CHUNKS, nx), np.int32), np.empty(nx + 1, np.int32),
-            np.empty(count, np.int32), np.empty((count, 3), np.int32),
-            np.empty((count, 3), dtype), np.empty((count, 3, WIDTH), dtype),
-            space.settings, space.field, space.field.reshape(-1), space.waves.reshape(-1),
-            space.rooms)
-        self._sums = np.empty((nz // 2 + 1, 2))
+        count, (nx, ny, nz) = len(self.charge), (int(n) for n in mesh)
+        self._shape = nx, ny, nz
+        self._taps = tuple(range(order))  # a tuple, for the compiler to know how many
+        self._taylor = spline_table(order).astype(dtype)
+        self._planes = np.empty((CHUNKS, nx), np.int32), np.empty(nx + 1, np.int32)
+        self._splines = (np.empty(count, np.int32), np.empty((count, 3), np.int32),
+                         np.empty((count, 3), dtype), np.empty((count, 3, WIDTH), dtype))
+        self._field = np.zeros((nx, ny + WIDTH, nz + WIDTH), dtype)
+        self._density = self._field[:, :ny, :nz]
+        self._share = np.full(nz // 2 + 1, 2.0)
+        self._share[0] = 1.0
+        if nz % 2 == 0:
+            self._share[-1] = 1.0
         self._prepare(np.array(box, float))
 
     def _prepare(self, box):
-        self._box = box
-        waves = [scipy.fft.fftfreq(n, 1 / n) for n in self.mesh]
-        spreads = [(2 * np.pi * n / edge) ** 2 / (4 * self.alpha**2)
-                   for n, edge in zip(waves, box, strict=True)]
-        moduli = [spline_moduli(int(n), self.order) for n in self.mesh]
-        x, z, y = np.ix_(*(spreads[a] for a in (0, 2, 1)))
-        spread = x + z + y
-        spread[0, 0, 0] = np.inf  # no k = 0: conducting boundary
-        coupling = np.pi * COULOMB / (box.prod() * self.alpha**2) * np.exp(-spread) / spread
-        for part in np.ix_(*(moduli[a] for a in (0, 2, 1))):
-            coupling *= part
+        self._box, self._scale = box, self.mesh / box
+        nx, ny, nz = self._shape
+        waves = [scipy.fft.fftfreq(nx, 1 / nx), scipy.fft.fftfreq(ny, 1 / ny),
+                 scipy.fft.rfftfreq(nz, 1 / nz)]
+        self._spreads = [(2 * np.pi * n / edge) ** 2 / (4 * self.alpha**2)
+                         for n, edge in zip(waves, box, strict=True)]
+        bx, by, bz = (spline_moduli(n, self.order) for n in self._shape)
+        self._coupling = np.empty((nx, ny, nz // 2 + 1), self.dtype)
+        strength = np.pi * COULOMB / (box.prod() * self.alpha**2)
+        for x in range(nx):  # plane by plane: the whole in double would be the peak of memory
+            spread = self._spreads[0][x] + np.add.outer(*self._spreads[1:])
+            if x == 0:
+                spread[0, 0] = np.inf  # no k = 0: conducting boundary
+            self._coupling[x] = (strength * bx[x] * np.exp(-spread) / spread
+                                 * np.outer(by, bz[: nz // 2 + 1]))
         # What rounding hides is left out: numbers near the smallest that floats hold are slow.
-        coupling[coupling < 1e-6 * np.finfo(self.dtype).eps * coupling.max()] = 0.0
-        self._coupling = self.mesh / box, coupling.astype(self.dtype), tuple(spreads)
+        self._coupling[self._coupling < 1e-6 * np.finfo(self.dtype).eps * self._coupling.max()] = 0
 
     def evaluate(self, place, box, force, energies=True):
         """Overwrite `force` (M, 3); return (energy, virial with all places scaled) or None.
@@ -219,8 +248,18 @@ class MeshEwald:
         """
         if not np.array_equal(box, self._box):
             self._prepare(np.array(box, float))
-        _evaluate(place, self._box, energies, *self._settings, *self._coupling, self._sums, force)
-        if not energies:
-            return None
-        energy, virial = self._sums.sum(axis=0)
+        _spread(place, self._box, self.charge, self.mesh, self._taps, self._taylor, *self._planes,
+                *self._splines, self._field)
+        spectrum = scipy.fft.rfftn(self._density)
+        sums = self._sums(spectrum) if energies else None
+        spectrum *= self._coupling
+        potential = scipy.fft.irfftn(spectrum, self._shape, norm="forward", overwrite_x=True)
+        _gather(potential, self.mesh, self._scale, self._taps, self._taylor, self.charge,
+                *self._splines, self._field, force)
+        return sums
+
+    def _sums(self, spectrum):
+        sums = np.empty((len(spectrum), 2))
+        _mode_sums(spectrum, self._coupling, *self._spreads, self._share, sums)
+        energy, virial = sums.sum(axis=0)
         return float(energy), float(virial)

@@ -17,15 +17,6 @@ from numba.extending import intrinsic, register_model
 from swirlight.forces.kernels.lowlevel import FUNCTION_HINTS
 
 LANES = 8
-LINE = 64  # bytes that the processor moves at once
-
-
-def aligned_zeros(shape, dtype):
-    """A new array of zeros that begins where a vector of the widest kind may."""
-    dtype = np.dtype(dtype)
-    store = np.zeros(int(np.prod(shape)) + LINE // dtype.itemsize, dtype)
-    first = -store.ctypes.data % LINE // dtype.itemsize
-    return store[first:first + int(np.prod(shape))].reshape(shape)
 
 
 class RowType(types.Type):
@@ -56,24 +47,19 @@ def _size(context, kind):
     return context.get_abi_sizeof(context.get_value_type(kind.dtype))
 
 
-def _hint(separate):
-    """The intrinsic that asks for the widest vectors, and may promise separate arrays."""
+@intrinsic
+def _distinct(typing_context):
+    def codegen(context, builder, signature, args):
+        function = builder.function
+        for hint in FUNCTION_HINTS:
+            set.add(function.attributes, hint)
+        # The first two arguments are where numba returns the value and the exception.
+        for argument in function.args[2:]:
+            if isinstance(argument.type, ir.PointerType):
+                argument.attributes.add("noalias")
+        return context.get_dummy_value()
 
-    @intrinsic
-    def hint(typing_context):
-        def codegen(context, builder, signature, args):
-            function = builder.function
-            for attribute in FUNCTION_HINTS:
-                set.add(function.attributes, attribute)
-            # The first two arguments are where numba returns the value and the exception.
-            for argument in function.args[2:]:
-                if separate and isinstance(argument.type, ir.PointerType):
-                    argument.attributes.add("noalias")
-            return context.get_dummy_value()
-
-        return types.none(), codegen
-
-    return hint
+    return types.none(), codegen
 
 
 @intrinsic
@@ -137,8 +123,6 @@ if numba.config.DISABLE_JIT:
     def distinct():
         return None
 
-    widest = distinct
-
     def row_at(array, index):
         return array[index[:-1]][index[-1]:index[-1] + LANES].copy()
 
@@ -156,6 +140,5 @@ if numba.config.DISABLE_JIT:
             row = row[:len(row) // 2] + row[len(row) // 2:]
         return row[0]
 else:
-    distinct, widest = _hint(True), _hint(False)
-    row_at, put_row, filled, fused, total = (
-        _row_at, _put_row, _filled, _fused, _total)
+    distinct, row_at, put_row, filled, fused, total = (
+        _distinct, _row_at, _put_row, _filled, _fused, _total)
