@@ -113,9 +113,8 @@ class Kind:
         else:
             place = place - box * np.floor(place / box)
             search.sort(place, edge, cells, order)
-            x, y, z = (np.arange(n) for n in repeat)
-            shift = np.stack(np.meshgrid(z, y, x, indexing="ij"), axis=-1).reshape(-1, 1, 3)
-            images = place[order] + shift[..., ::-1] * box
+            z, y, x = np.indices(repeat[::-1]).reshape(3, -1)
+            images = place[order] + (np.array([x, y, z]).T * box)[:, None]
             search.sort(images.reshape(-1, 3), edge, cells, self.copies.order)
         self.body = self.first + order
 

@@ -15,11 +15,11 @@ from swirlight.forces.kernels import records, search
 from swirlight.forces.kinds import aligned
 
 SKINS = (0.01, 0.3)  # the least and the largest skin. [nm]
-FIRST_SKIN = 0.06  # to begin with. [nm]
+FIRST_SKIN = 0.07  # to begin with. [nm]
 FLOAT_SLACK = 1e-5  # what distances in float may be wrong by, and more. [nm]
 LOST = "positions or orientations are no longer finite numbers"
 # Time of making the list over that of one call of the forces (measured).
-LIST_COST = 0.4
+LIST_COST = 0.8
 
 
 @dataclass

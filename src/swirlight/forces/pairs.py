@@ -8,7 +8,7 @@ Bits    each body sums over its own row of a full neighbour list, so results do 
         the number of threads.
 """
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -40,7 +40,10 @@ class PairSums:
 
 @dataclass
 class Call:
-    """One kernel call: a group of sites of one kind against a group of another's."""
+    """One kernel call: a group of sites of one kind against a group of another's.
+
+    anew : whether it is the first for its own kind, whose sums then begin at nought.
+    """
 
     own: int
     other: int
@@ -48,7 +51,8 @@ class Call:
     its_sites: int
     pattern: Pattern
     pairs: np.ndarray
-    modules: dict
+    anew: bool
+    modules: dict = field(default_factory=dict)
 
 
 def _groups(sites):
@@ -82,11 +86,16 @@ class PairForces:
         kinds = interacting_kinds(system, touching.any(axis=1) | (charge != 0))
         self.neighbours = Neighbours(system, kinds, inter.cutoff, self.real, repeat)
         self._tables(coulomb, inter)
-        self.calls = [
-            call for a in range(len(kinds)) for b in range(len(kinds))
-            for call in self._calls(a, b, touching, charge)
-        ]
+        self.calls = []
+        for a in range(len(kinds)):
+            for b in range(len(kinds)):
+                self._add_calls(a, b, touching, charge)
         self._sums = np.zeros((system.bodies, 5))
+        pushed = {call.own for call in self.calls}
+        self._left_alone = np.ones(system.bodies, bool)
+        for kind in (kinds[a] for a in pushed):
+            self._left_alone[kind.first:kind.first + kind.count] = False
+        self._left_alone = np.flatnonzero(self._left_alone)
 
     def _tables(self, coulomb, inter):
         """Coefficients of the Coulomb law and the lengths that go with the cutoff."""
@@ -100,7 +109,7 @@ class PairForces:
             [cutoff**2, 2 / cutoff**2, start, 1 / (cutoff - start), out_of_reach,
              coulomb.force_shift], self.real)
 
-    def _calls(self, a, b, touching, charge):
+    def _add_calls(self, a, b, touching, charge):
         """The kernel calls for bodies of kind a as pushed by those of kind b."""
         own, other = self.neighbours.kinds[a], self.neighbours.kinds[b]
         for own_from, own_to in _groups(own.sites):
@@ -108,7 +117,9 @@ class PairForces:
                 mine, its = own.types[own_from:own_to], other.types[other_from:other_to]
                 pattern, pairs = self._pattern(own, other, mine, its, touching, charge)
                 if pattern.pairs:
-                    yield Call(a, b, 3 + 3 * own_from, 3 + 3 * other_from, pattern, pairs, {})
+                    anew = all(call.own != a for call in self.calls)
+                    self.calls.append(Call(a, b, 3 + 3 * own_from, 3 + 3 * other_from, pattern,
+                                           pairs, anew))
 
     def _pattern(self, own, other, mine, its, touching, charge):
         """What the kernel of these site types depends on, and the numbers of its pairs."""
@@ -145,9 +156,8 @@ class PairForces:
         check_box(box, self.system.interactions.cutoff, self.system.bodies)
         near = self.neighbours
         near.update(position, orientation, box)
-        force[:], torque[:] = 0.0, 0.0
-        if energies:
-            self._sums[:] = 0.0
+        if len(self._left_alone):
+            force[self._left_alone] = torque[self._left_alone] = 0.0
         for call in self.calls:
             own, other = near.kinds[call.own], near.kinds[call.other]
             rows = near.rows[call.own, call.other]
@@ -157,8 +167,8 @@ class PairForces:
             call.modules[energies].rows(
                 own.records.ravel(), own.centres.ravel(), other.records.ravel(),
                 other.centres.ravel(), call.my_sites, call.its_sites, rows.entries, rows.counts,
-                near.unit, call.pairs, self.screening, self.limits, own.body, force, torque,
-                self._sums)
+                near.unit, call.pairs, self.screening, self.limits, own.body, call.anew, force,
+                torque, self._sums)
         if not energies:
             return None
         # Each pair stands in two rows.

@@ -46,8 +46,9 @@ def _copy(records, centres, row, copy, x, y, z, repeat):
 @kernel
 def _place_some(begin, end, position, orientation, body, site, edge, repeat, anew, image,
                 reference, records, centres):
-    n, sites = body.shape[0], site.shape[0]
-    furthest = 0.0
+    n, sites, furthest = body.shape[0], site.shape[0], 0.0
+    per_edge = 1.0 / edge[0], 1.0 / edge[1], 1.0 / edge[2]
+    per_copy = 1.0 / repeat[0], 1.0 / repeat[1], 1.0 / repeat[2]  # exact
     for i in range(begin, end):
         b = body[i]
         turn = matrix_entries(orientation[b, 0], orientation[b, 1], orientation[b, 2],
@@ -64,10 +65,10 @@ def _place_some(begin, end, position, orientation, body, site, edge, repeat, ane
             if distance2 > furthest or distance2 != distance2:  # NaN must come through
                 furthest = distance2
         for k in range(3):
-            share = position[b, k] / edge[k]
+            share = position[b, k] * per_edge[k]
             if anew:
                 image[i, k] = np.floor(share)
-            fraction = (share - image[i, k]) / repeat[k]
+            fraction = (share - image[i, k]) * per_copy[k]
             _set_centre(records, centres, i, k, fraction - np.floor(fraction))
         copy = i
         for z in range(repeat[2]):

@@ -80,7 +80,7 @@ ROWS = '''
 
 @kernel(fast=True)
 def some_rows(begin, end, own, own_centre, other, other_centre, my_sites, its_sites, entries,
-              counts, edge, pairs, screening, limits, body, force, torque, sums):
+              counts, edge, pairs, screening, limits, body, anew, force, torque, sums):
     streamlined()
 {before}
     for i in range(begin, end):
@@ -94,12 +94,12 @@ def some_rows(begin, end, own, own_centre, other, other_centre, my_sites, its_si
 
 @kernel(parallel=True)
 def rows(own, own_centre, other, other_centre, my_sites, its_sites, entries, counts, edge, pairs,
-         screening, limits, body, force, torque, sums):
+         screening, limits, body, anew, force, torque, sums):
     n = counts.shape[0]
     for chunk in numba.prange(CHUNKS):
         some_rows(chunk * n // CHUNKS, (chunk + 1) * n // CHUNKS, own, own_centre, other,
                   other_centre, my_sites, its_sites, entries, counts, edge, pairs, screening,
-                  limits, body, force, torque, sums)
+                  limits, body, anew, force, torque, sums)
 '''
 
 # The square root's reciprocal: the compiler makes the processor's estimate and a Newton step
@@ -253,7 +253,11 @@ def _loop(pattern):
 
 def _after(pattern):
     """Lines that add the sums of one body, in double precision from here on."""
-    lines = ["b = body[i]"]
+    lines = ["b = body[i]", "if anew:",
+             "    force[b, 0] = force[b, 1] = force[b, 2] = 0.0",
+             "    torque[b, 0] = torque[b, 1] = torque[b, 2] = 0.0"]
+    if pattern.energies:
+        lines.append("    sums[b, 0] = sums[b, 1] = sums[b, 2] = sums[b, 3] = sums[b, 4] = 0.0")
     for a in range(pattern.own):
         for k, x in enumerate("xyz"):
             lines += [f"{x}, f{x} = np.float64({x}{a}), np.float64(f{x}{a})",
@@ -270,7 +274,7 @@ def pair_source(pattern):
     """The text of a module whose `rows` adds the pair forces of one pattern to all bodies.
 
     rows(own, own_centre, other, other_centre, my_sites, its_sites, entries, counts, edge,
-         pairs, screening, limits, body, force, torque, sums)
+         pairs, screening, limits, body, anew, force, torque, sums)
 
     own, other : flat records; own_centre, other_centre : the same memory as int32.
     my_sites, its_sites : word of a record with which the sites of this call begin.
@@ -281,7 +285,7 @@ def pair_source(pattern):
     screening : (2, degree + 1) of `laws.CoulombLaw.polynomials`.
     limits : rc², 2/rc², start of the switch, 1 / its width, a place out of reach, force shift.
     body : (n,) where force and torque (N, 3) and, with energies, sums (N, 5) are
-        added to: Lennard-Jones, Coulomb, virial x, y, z.
+        added to: Lennard-Jones, Coulomb, virial x, y, z; anew : whether those begin at nought.
     """
     lanes = LANES[pattern.real]
     text = HEADER.format(pattern=pattern, lanes=lanes, real=pattern.real)
