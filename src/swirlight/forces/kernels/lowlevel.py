@@ -3,7 +3,7 @@
 `at` reads an array at a 32-bit index without numba's test for negative indices, so that a
 loop over neighbours becomes 32-bit gathers. `streamlined` promises the compiler that the
 arrays a function gets do not overlap where it writes, and asks for the widest vectors in
-its first innermost loop.
+its first innermost loop, 8 or 16 numbers where the processor has them and half as many if not.
 `pick` copies those of 16 integers whose values are negative: newer processors do it in one
 instruction, and for others the plain form is compiled.
 Uncompiled (NUMBA_DISABLE_JIT=1) the plain forms at the end stand in.
@@ -115,8 +115,8 @@ def _plain_pick(source, start, value, value_start, target, place):
     return place
 
 
-def _compresses():
-    """Whether the processor packs those lanes of a vector that pass a test."""
+def _wide():
+    """Whether vectors have 512 bits; such processors also pack the lanes that pass a test."""
     features = numba.config.CPU_FEATURES
     if features is None:
         features = numba.core.codegen.get_host_cpu_features()
@@ -138,5 +138,7 @@ if numba.config.DISABLE_JIT:
     pick = _plain_pick
 else:
     at, fused = _at, _fused
-    pick = _pick if _compresses() else kernel(_plain_pick)
-    streamlined8, streamlined16 = _streamlining(8), _streamlining(16)
+    if _wide():
+        pick, streamlined8, streamlined16 = _pick, _streamlining(8), _streamlining(16)
+    else:
+        pick, streamlined8, streamlined16 = kernel(_plain_pick), _streamlining(4), _streamlining(8)

@@ -12,6 +12,7 @@ times; the records of the copies follow those of the bodies, and fractions are o
 import numpy as np
 
 from swirlight.compiled import CHUNKS, kernel, numba
+from swirlight.forces.kernels.calls import INNER
 from swirlight.forces.kernels.search import WHOLE
 from swirlight.rotation_kernels import matrix_entries
 
@@ -21,7 +22,7 @@ def record_words(sites):
     return -(-(3 + 3 * sites) // 8) * 8
 
 
-@kernel
+@kernel(**INNER)
 def _set_centre(records, centres, row, k, fraction):
     if records.itemsize == 4:
         centres[row, k] = np.int32(np.int64(fraction * WHOLE))
@@ -29,7 +30,7 @@ def _set_centre(records, centres, row, k, fraction):
         records[row, k] = fraction
 
 
-@kernel
+@kernel(**INNER)
 def _copy(records, centres, row, copy, x, y, z, repeat):
     """A copy of a record, x, y, z edges along."""
     for word in range(3, records.shape[1]):
@@ -43,7 +44,7 @@ def _copy(records, centres, row, copy, x, y, z, repeat):
             records[copy, k] = records[row, k] + shift[k] / repeat[k]
 
 
-@kernel
+@kernel(**INNER)
 def _place_some(begin, end, position, orientation, body, site, edge, repeat, anew, image,
                 reference, records, centres):
     n, sites, furthest = body.shape[0], site.shape[0], 0.0

@@ -14,6 +14,7 @@ per site, not one per pair of sites, misses none, and lets few through that are 
 import numpy as np
 
 from swirlight.compiled import CHUNKS, kernel, numba
+from swirlight.forces.kernels.calls import INNER
 from swirlight.forces.kernels.lowlevel import at, pick, streamlined16
 
 WHOLE = 4294967296.0  # 2³²
@@ -83,7 +84,7 @@ def bound(inner_place, inner_half, count, unit, place, half):
             half[k, b] = 0.5 * (high - low) + 1e-6  # more than rounding
 
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def _judge_boxes(place, half, begin, end, x, y, z, hx, hy, hz, unit, reach2, value):
     """value < 0 where boxes are within reach of the box at x, y, z with half edges hx, hy, hz.
 
@@ -102,7 +103,7 @@ def _judge_boxes(place, half, begin, end, x, y, z, hx, hy, hz, unit, reach2, val
         value[k] = dx * dx + dy * dy + dz * dz - reach2
 
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def _judge_centres(blocks, count, word, place, mine, x, y, z, unit, reach2, value):
     """value < 0 where a centre is within reach, of bodies in blocks other than `mine`."""
     streamlined16()
@@ -119,7 +120,7 @@ def _judge_centres(blocks, count, word, place, mine, x, y, z, unit, reach2, valu
             out[k] = excess if (j != mine) & (j >= 0) else reach2
 
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def _judge(blocks, count, word, place, arm, site, mine, x, y, z, three, unit, reach2, more,
            extent, value):
     """value < 0 where a site of three may be within reach of one of three of this body.
@@ -163,7 +164,7 @@ def _judge(blocks, count, word, place, arm, site, mine, x, y, z, three, unit, re
             out[k] = r if (j != mine) & (j >= 0) else reach2
 
 
-@kernel
+@kernel(**INNER)
 def _near_blocks(x, y, z, hx, hy, hz, block, half, group, group_half, number, unit, far2, value,
                  near, near_half, near_number):
     """Copy the blocks within reach of a box to `near`, what they are to `near_number`; how many.
@@ -190,7 +191,7 @@ def _near_blocks(x, y, z, hx, hy, hz, block, half, group, group_half, number, un
     return whole
 
 
-@kernel
+@kernel(**INNER)
 def _choose_rows(begin, end, own_words, own_place, own_arm, word, place, arm, near, near_half,
                  near_number, whole, same, unit, reach2, far2, blocks, three, site, extent, value,
                  row, entries, counts):
@@ -226,7 +227,7 @@ def _choose_rows(begin, end, own_words, own_place, own_arm, word, place, arm, ne
             entries[i, k] = row[k]
 
 
-@kernel
+@kernel(**INNER)
 def _choose_some(begin, end, own_words, own_place, own_arm, own_block, own_half, word, place, arm,
                  block, half, group, group_half, number, same, unit, reach, margin, entries,
                  counts):

@@ -61,6 +61,7 @@ import numba
 import numpy as np
 
 from swirlight.compiled import CHUNKS, kernel
+from swirlight.forces.kernels.calls import INNER
 from swirlight.forces.kernels.lowlevel import at, fused, streamlined{lanes} as streamlined
 
 real = np.{real}
@@ -70,7 +71,7 @@ zero, half, one = real(0.0), real(0.5), real(1.0)
 # One site pair: its force over the distance, outward, and its energies.
 PAIR = '''
 
-@kernel(fast=True, forceinline=True)
+@kernel(fast=True, forceinline=True, **INNER)
 def {name}(r2, pair, p, g, limits):
     cutoff2, scale, start, steep, far, pull = limits
 {body}
@@ -78,7 +79,7 @@ def {name}(r2, pair, p, g, limits):
 
 ROWS = '''
 
-@kernel(fast=True)
+@kernel(fast=True, **INNER)
 def some_rows(begin, end, own, own_centre, other, other_centre, my_sites, its_sites, entries,
               counts, edge, pairs, screening, limits, body, anew, force, torque, sums):
     streamlined()
