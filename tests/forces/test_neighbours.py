@@ -50,13 +50,16 @@ def test_lists_hold_every_image_within_reach(box):
     neighbours = pairs.neighbours
     kind, rows = neighbours.kinds[0], neighbours.rows[0, 0]
     expected = plain_rows(system, neighbours, position, orientation, box)
+    spare = 0
     for i, body in enumerate(kind.body):
         slots = rows.entries[i, : rows.counts[i]] // kind.words
         listed = kind.body[slots % kind.count].tolist()
         for other, _ in expected[body]:
             listed.remove(other)  # ValueError: an image is missing
-        # What is left has its centre within reach, though no site.
-        assert len(listed) <= 2
+        spare += len(listed)
+    # What is left is near along the line of centres only, by less than d²/reach, d < 0.1 nm
+    # across it: 0.01 nm, or 3 % of the volume.
+    assert spare < 0.03 * rows.counts.sum()
 
 
 def walk(rng, position, orientation, stride):
