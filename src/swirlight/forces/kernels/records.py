@@ -11,8 +11,7 @@ times; the records of the copies follow those of the bodies, and fractions are o
 
 import numpy as np
 
-from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.kernels.calls import INNER
+from swirlight.compiled import CHUNKS, INNER, kernel, numba
 from swirlight.forces.kernels.search import WHOLE
 from swirlight.rotation_kernels import matrix_entries
 

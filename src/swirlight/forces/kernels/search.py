@@ -13,8 +13,7 @@ per site, not one per pair of sites, misses none, and lets few through that are 
 
 import numpy as np
 
-from swirlight.compiled import CHUNKS, kernel, numba
-from swirlight.forces.kernels.calls import INNER
+from swirlight.compiled import CHUNKS, INNER, kernel, numba
 from swirlight.forces.kernels.lowlevel import at, pick, streamlined16
 
 WHOLE = 4294967296.0  # 2³²

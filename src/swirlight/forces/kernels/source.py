@@ -60,8 +60,7 @@ import math
 import numba
 import numpy as np
 
-from swirlight.compiled import CHUNKS, kernel
-from swirlight.forces.kernels.calls import INNER
+from swirlight.compiled import CHUNKS, INNER, kernel
 from swirlight.forces.kernels.lowlevel import at, fused, streamlined{lanes} as streamlined
 
 real = np.{real}
