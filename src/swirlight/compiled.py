@@ -14,8 +14,6 @@ import warnings
 
 # NaN and infinity stay visible (no nnan, ninf): a trajectory that blows up must be seen.
 FAST = {"reassoc", "nsz", "contract", "arcp", "afn"}
-# Settings of a kernel that only other kernels call: it needs no door for Python.
-INNER = {"no_cpython_wrapper": True, "no_cfunc_wrapper": True}
 KERNEL_ROOMS = ("light", "forces", "motion", "observe")
 KERNEL_FILES = ("compiled.py", "rotation_kernels.py")  # outside of them
 # Parallel kernels split their work into this many parts whatever the number of threads,
