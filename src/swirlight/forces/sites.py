@@ -6,7 +6,7 @@ Layers  kernels check nothing; `place_sites` is their door.
 
 import numpy as np
 
-from swirlight.compiled import CHUNKS, kernel, numba
+from swirlight.compiled import kernel
 
 
 @kernel
@@ -45,38 +45,35 @@ def place_sites(system, position, orientation, out_lever):
 
 
 @kernel
-def _place_some(first, last, position, orientation, first_charge, row, type_position, place):
-    for i in range(first, last):
-        w, x, y, z = orientation[i]
-        for m in range(first_charge[i], first_charge[i + 1]):
-            bx, by, bz = type_position[row[m]]
-            place[m, 0] = position[i, 0] + ((1 - 2 * (y * y + z * z)) * bx
-                                            + 2 * (x * y - w * z) * by + 2 * (x * z + w * y) * bz)
-            place[m, 1] = position[i, 1] + (2 * (x * y + w * z) * bx
-                                            + (1 - 2 * (x * x + z * z)) * by
-                                            + 2 * (y * z - w * x) * bz)
-            place[m, 2] = position[i, 2] + (2 * (x * z - w * y) * bx + 2 * (y * z + w * x) * by
-                                            + (1 - 2 * (x * x + y * y)) * bz)
-
-
-@kernel(parallel=True)
 def place_charges(position, orientation, first_charge, row, type_position, place):
     """Absolute places (M, 3) of the charges.
 
     first_charge : (N + 1,), body i has charges first_charge[i] … first_charge[i + 1] − 1.
     row : (M,) where type_position has the place of each in its body's frame.
     """
-    bodies = position.shape[0]
-    for n in numba.prange(CHUNKS):
-        _place_some(bodies * n // CHUNKS, bodies * (n + 1) // CHUNKS, position, orientation,
-                    first_charge, row, type_position, place)
+    for i in range(position.shape[0]):
+        w, x, y, z = orientation[i]
+        xx, xy, xz = 1 - 2 * (y * y + z * z), 2 * (x * y - w * z), 2 * (x * z + w * y)
+        yx, yy, yz = 2 * (x * y + w * z), 1 - 2 * (x * x + z * z), 2 * (y * z - w * x)
+        zx, zy, zz = 2 * (x * z - w * y), 2 * (y * z + w * x), 1 - 2 * (x * x + y * y)
+        for m in range(first_charge[i], first_charge[i + 1]):
+            bx, by, bz = type_position[row[m]]
+            place[m, 0] = position[i, 0] + (xx * bx + xy * by + xz * bz)
+            place[m, 1] = position[i, 1] + (yx * bx + yy * by + yz * bz)
+            place[m, 2] = position[i, 2] + (zx * bx + zy * by + zz * bz)
 
 
 @kernel
-def _add_some(first, last, position, orientation, freedom, first_charge, place, push, force,
-              torque, sums):
-    sums[:] = 0.0
-    for i in range(first, last):
+def add_to_bodies(position, orientation, freedom, mass, drifts, place, push, first_charge, force,
+                  torque):
+    """Add forces on charges to their bodies; return Σ f·d, d the charge's place in its body.
+
+    Then take out of the torques what a body cannot follow (all of an atom's, a linear body's
+    axial part), and where `drifts` the mass-weighted mean force: the centre of mass is not
+    pushed.
+    """
+    work = 0.0
+    for i in range(position.shape[0]):
         for m in range(first_charge[i], first_charge[i + 1]):
             fx, fy, fz = push[m]
             dx, dy = place[m, 0] - position[i, 0], place[m, 1] - position[i, 1]
@@ -87,7 +84,7 @@ def _add_some(first, last, position, orientation, freedom, first_charge, place, 
             torque[i, 0] += dy * fz - dz * fy
             torque[i, 1] += dz * fx - dx * fz
             torque[i, 2] += dx * fy - dy * fx
-            sums[3] += fx * dx + fy * dy + fz * dz
+            work += fx * dx + fy * dy + fz * dz
         if freedom[i] == 0:
             torque[i, :] = 0.0
         elif freedom[i] == 2:
@@ -97,38 +94,10 @@ def _add_some(first, last, position, orientation, freedom, first_charge, place, 
             torque[i, 0] -= along * ax
             torque[i, 1] -= along * ay
             torque[i, 2] -= along * az
-        for a in range(3):
-            sums[a] += force[i, a]
-
-
-@kernel
-def _remove_mean(sums, mass, force):
-    """Take the mass-weighted mean force off every body: the centre of mass is not pushed."""
-    whole = np.sum(mass)
-    for a in range(3):
-        mean = np.sum(sums[:, a]) / whole
-        for i in range(force.shape[0]):
-            force[i, a] -= mass[i] * mean
-
-
-@kernel
-def _sum_in_order(numbers):
-    return np.sum(numbers)  # inside a parallel kernel np.sum would be split among the threads
-
-
-@kernel(parallel=True)
-def add_to_bodies(position, orientation, freedom, mass, drifts, place, push, first_charge, force,
-                  torque):
-    """Add forces on charges to their bodies; return Σ f·d, d the charge's place in its body.
-
-    Then take out of the torques what a body cannot follow (all of an atom's, a linear body's
-    axial part), and where `drifts` the mean force.
-    """
-    bodies = position.shape[0]
-    sums = np.empty((CHUNKS, 4))
-    for n in numba.prange(CHUNKS):
-        _add_some(bodies * n // CHUNKS, bodies * (n + 1) // CHUNKS, position, orientation,
-                  freedom, first_charge, place, push, force, torque, sums[n])
     if drifts:
-        _remove_mean(sums, mass, force)
-    return _sum_in_order(sums[:, 3])
+        whole = np.sum(mass)
+        for a in range(3):
+            mean = np.sum(force[:, a]) / whole
+            for i in range(force.shape[0]):
+                force[i, a] -= mass[i] * mean
+    return work
