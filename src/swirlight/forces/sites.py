@@ -12,10 +12,13 @@ from swirlight.compiled import kernel
 @kernel
 def _place_sites(orientation, species_of, type_start, type_position, site_start, lever):
     for i in range(orientation.shape[0]):
-        w, x, y, z = orientation[i]
+        # Written out: `w, x, y, z = orientation[i]` tests lengths, at three times the cost.
+        w, x, y, z = (orientation[i, 0], orientation[i, 1], orientation[i, 2],
+                      orientation[i, 3])
         first = type_start[species_of[i]]
         for s in range(site_start[i], site_start[i + 1]):
-            bx, by, bz = type_position[first + s - site_start[i]]
+            k = first + s - site_start[i]
+            bx, by, bz = type_position[k, 0], type_position[k, 1], type_position[k, 2]
             lever[s, 0] = ((1 - 2 * (y * y + z * z)) * bx + 2 * (x * y - w * z) * by
                            + 2 * (x * z + w * y) * bz)
             lever[s, 1] = (2 * (x * y + w * z) * bx + (1 - 2 * (x * x + z * z)) * by
@@ -52,12 +55,14 @@ def place_charges(position, orientation, first_charge, row, type_position, place
     row : (M,) where type_position has the place of each in its body's frame.
     """
     for i in range(position.shape[0]):
-        w, x, y, z = orientation[i]
+        w, x, y, z = (orientation[i, 0], orientation[i, 1], orientation[i, 2],
+                      orientation[i, 3])
         xx, xy, xz = 1 - 2 * (y * y + z * z), 2 * (x * y - w * z), 2 * (x * z + w * y)
         yx, yy, yz = 2 * (x * y + w * z), 1 - 2 * (x * x + z * z), 2 * (y * z - w * x)
         zx, zy, zz = 2 * (x * z - w * y), 2 * (y * z + w * x), 1 - 2 * (x * x + y * y)
         for m in range(first_charge[i], first_charge[i + 1]):
-            bx, by, bz = type_position[row[m]]
+            s = row[m]
+            bx, by, bz = type_position[s, 0], type_position[s, 1], type_position[s, 2]
             place[m, 0] = position[i, 0] + (xx * bx + xy * by + xz * bz)
             place[m, 1] = position[i, 1] + (yx * bx + yy * by + yz * bz)
             place[m, 2] = position[i, 2] + (zx * bx + zy * by + zz * bz)
