@@ -2,8 +2,8 @@
 
 The list holds the bodies with any two sites within cutoff + skin. It is made anew when a site
 has moved by half the skin since (see `kernels/search.py`), so no pair of sites within the
-cutoff is ever missed. It is a full list, a row per body, an entry per (body, image): where the box is
-too small for one image per body it is repeated (see `kernels/records.py`).
+cutoff is ever missed. It is a full list, a row per body, an entry per (body, image): where the
+box is too small for one image per body it is repeated (see `kernels/records.py`).
 """
 
 from dataclasses import dataclass
