@@ -68,7 +68,7 @@ def test_edges_and_start_file_give_the_box(tmp_path):
     edges = plan(text=BASE.replace("density: 0.777 g/cm^3", "edges: [2.1 nm, 2.2 nm, 2.3 nm]"))
     assert [value(edges, f"edge {a}") for a in "xyz"] == pytest.approx([2.1, 2.2, 2.3])
 
-    from swirlight.run.sample import build_system
+    from swirlight.sample import build_system
     from swirlight.state import State
 
     zeros = np.zeros((108, 3))

@@ -13,7 +13,8 @@ from swirlight.motion.draw import draw_motion, draw_orientations
 from swirlight.motion.step import Mover, stray_spins
 from swirlight.rotation import to_body, to_laboratory
 from swirlight.run.arrange import lattice_positions, remove_overlaps
-from swirlight.run.sample import box_edges, build_system
+from swirlight.run.sample import box_edges
+from swirlight.sample import build_system
 from swirlight.state import State
 from swirlight.store.start import load_state, save_state
 

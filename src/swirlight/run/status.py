@@ -6,7 +6,7 @@ Reads files only, so it answers while a run is under way and after its driver di
 from swirlight.light.build import pulses_from_config
 from swirlight.run.exposures import list_exposures
 from swirlight.run.folder import RunFolder
-from swirlight.run.sample import build_system
+from swirlight.sample import build_system
 from swirlight.store.lock import locked
 from swirlight.store.run import read_json
 

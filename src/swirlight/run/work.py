@@ -14,9 +14,9 @@ from swirlight.run.folder import RunFolder
 from swirlight.run.header import file_header
 from swirlight.run.record import Recorder, watched_bodies
 from swirlight.run.response import beam
-from swirlight.run.sample import build_system
 from swirlight.run.spacing import SAFETY, correlation_times
 from swirlight.run.trajectory import Clock, Leg, Trajectory
+from swirlight.sample import build_system
 from swirlight.store.durable import make_folder, remove, remove_folder, write_json
 from swirlight.store.run import open_run
 from swirlight.store.start import load_state, save_state

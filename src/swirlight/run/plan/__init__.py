@@ -15,7 +15,8 @@ from swirlight.run.plan import cost, light, sample, stages
 from swirlight.run.plan.echo import echo
 from swirlight.run.plan.page import Notice, Plan, Row, Section
 from swirlight.run.plan.subject import Subject
-from swirlight.run.sample import box_edges, build_system
+from swirlight.run.sample import box_edges
+from swirlight.sample import build_system
 
 __all__ = ["Notice", "Plan", "Row", "Section", "check", "check_config"]
 
