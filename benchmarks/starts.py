@@ -2,9 +2,9 @@
 
 The small box starts from a lattice without overlaps and runs for 2 ps, its motion drawn anew
 ten times, so that bodies move as they do in the liquid. A larger one is whole copies of it
-(500 bodies 8, 64 or 216 times for the sizes of the tables), the bodies numbered in drawn order
-as on a lattice, and their motion drawn afresh. Where the number of bodies is no multiple, as
-few as possible are left out and the box shrinks to keep the density.
+(500 bodies 8, 64 or 216 times for the sizes of the tables), the bodies numbered along it, as in
+a run, and their motion drawn afresh. Where the number of bodies is no multiple, as few as
+possible are left out and the box shrinks to keep the density.
 """
 
 from functools import cache
@@ -53,7 +53,7 @@ def liquid(name, bodies, cutoff):
     small = _settled(name, -(-bodies // copies**3), cutoff)
     shift = np.stack(np.meshgrid(*[np.arange(copies)] * 3), axis=-1).reshape(-1, 1, 3)
     random = np.random.default_rng(2)
-    chosen = random.permutation(len(shift) * len(small.position))[:bodies]
+    chosen = np.sort(random.permutation(len(shift) * len(small.position))[:bodies])
     box = box_of(name, bodies)
     place = (small.position % small.box + shift * small.box).reshape(-1, 3)[chosen]
     nothing = np.zeros((2, bodies, 3))

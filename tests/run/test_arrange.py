@@ -54,6 +54,16 @@ def test_lattice_fills_odd_boxes_and_odd_numbers():
         assert len(np.unique(sites.round(9), axis=0)) == bodies
 
 
+def test_each_species_is_drawn_and_numbered_along_the_lattice():
+    box, counts = np.array([3.0, 3.0, 3.0]), (20, 88)  # 108 sites, none vacant
+    sites = lattice_positions(counts, box, np.random.default_rng(0))
+    everywhere = lattice_positions(108, box, np.random.default_rng(0))
+    rank = [int(np.flatnonzero((everywhere == site).all(axis=1))[0]) for site in sites]
+    assert sorted(rank) == list(range(108))
+    assert rank[:20] == sorted(rank[:20]) and rank[20:] == sorted(rank[20:])
+    assert rank[:20] != list(range(20))
+
+
 def test_too_dense_is_said():
     species = load_species("water")
     with pytest.raises(RunError, match="lower the density"):

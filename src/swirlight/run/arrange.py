@@ -19,17 +19,23 @@ ENOUGH = 0.1  # kT a body: a descent that gains less than this in `PATIENCE` ste
 PATIENCE = 20
 
 
-def lattice_positions(count, box, random):
-    """`count` sites of a face-centred lattice that fills the box, in drawn order. [nm]
+def lattice_positions(counts, box, random):
+    """Sites of a face-centred lattice that fills the box, for species after species. [nm]
 
-    box : (3,) edges. [nm]
-    random : numpy Generator; draws the vacancies and the order.
-    Returns (count, 3).
+    The bodies of a species are numbered along the lattice: neighbours in space are near each
+    other in memory, which large systems are faster for.
+
+    counts : bodies of each species, or one number. box : (3,) edges. [nm]
+    random : numpy Generator; draws the vacancies, and which species sits where.
+    Returns (sum of the counts, 3).
     """
-    cells = _cells(count, box)
+    counts = np.atleast_1d(counts)
+    cells = _cells(counts.sum(), box)
     corners = np.stack(np.meshgrid(*map(np.arange, cells), indexing="ij"), axis=-1).reshape(-1, 3)
     sites = (corners[:, None, :] + _FACE_CENTRED).reshape(-1, 3) / cells * box
-    return sites[random.permutation(len(sites))[:count]]
+    chosen = random.permutation(len(sites))[: counts.sum()]
+    of_species = np.split(chosen, np.cumsum(counts)[:-1])
+    return sites[np.concatenate([np.sort(part) for part in of_species])]
 
 
 def _cells(count, box):
@@ -53,7 +59,9 @@ def remove_overlaps(system, state, field):
     reach = np.array([max(s.radius, 0.05) for s in system.species])[system.species_of, None]
     scale, history = 1e-6, []
     forces = field.evaluate(state.position, state.orientation, state.box, energies=True)
-    energy, force, torque = forces.energy, forces.force.copy(), forces.torque.copy()
+    # Sites on top of each other have forces without a value: their bodies wait for the others.
+    energy = forces.energy if np.isfinite(forces.energy) else np.inf
+    force, torque = np.nan_to_num(forces.force), np.nan_to_num(forces.torque)
     for _ in range(DESCENT_STEPS):
         move = _capped(scale * force)
         # a rotation moves the outermost site by angle times reach
@@ -63,7 +71,8 @@ def remove_overlaps(system, state, field):
         forces = field.evaluate(position, orientation, state.box, energies=True)
         if np.isfinite(forces.energy) and forces.energy < energy:
             state.position[:], state.orientation[:] = position, orientation
-            energy, force, torque = forces.energy, forces.force.copy(), forces.torque.copy()
+            energy = forces.energy
+            force, torque = np.nan_to_num(forces.force), np.nan_to_num(forces.torque)
             scale *= 1.3
             history.append(energy)
             if len(history) > PATIENCE and _gained_little(history, system):

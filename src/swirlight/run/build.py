@@ -24,7 +24,7 @@ def lattice_start(config, system, box):
     random = np.random.Generator(np.random.PCG64(np.random.SeedSequence(config.seed)))
     zeros = np.zeros((system.bodies, 3))
     state = State(
-        position=lattice_positions(system.bodies, box, random),
+        position=lattice_positions(system.counts, box, random),
         orientation=draw_orientations(system.bodies, random),
         velocity=zeros, angular_momentum=zeros.copy(), box=box, random=random,
     )
