@@ -140,43 +140,32 @@ def _spread(place, box, charge, mesh, taps, taylor, count, start, rank, base, in
             field):
     """Charge density on the mesh."""
     charges = charge.shape[0]
-    for n in numba.prange(CHUNKS):
+    for n in range(CHUNKS):  # not worth the threads, nor another loop on threads to compile
         _count(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, mesh, count[n])
     _number(count, start)
     for n in numba.prange(CHUNKS):
         _fill_splines(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, place, box, charge,
                       mesh, taps, taylor, count[n], rank, base, inside, weight)
     for x in numba.prange(mesh[0]):
-        _fill_plane(x, mesh, start, taps, base, weight, field[x])
-
-
-@kernel(**INNER)
-def _copy_plane(potential, mesh, plane):
-    """A plane of the potential, and past the end of each row its beginning again."""
-    for y in range(mesh[1]):
-        for z in range(mesh[2]):
-            plane[y, z] = potential[y, z]
-        for z in range(WIDTH):
-            plane[y, mesh[2] + z] = potential[y, z]
+        # An unsigned x, as numba has it here, would be one more form of the kernel to compile.
+        _fill_plane(np.int64(x), mesh, start, taps, base, weight, field[x])
 
 
 @kernel(parallel=True)
-def _gather(potential, mesh, scale, taps, taylor, charge, rank, base, inside, weight, field, force):
+def _gather(mesh, scale, taps, taylor, charge, rank, base, inside, weight, field, force):
     """Force on every charge: minus its charge times the slope of the interpolated potential."""
     charges = charge.shape[0]
-    for x in numba.prange(mesh[0]):
-        _copy_plane(potential[x], mesh, field[x])
     for n in numba.prange(CHUNKS):
         _read_field(charges * n // CHUNKS, charges * (n + 1) // CHUNKS, mesh, scale, taps, taylor,
                     charge, rank, base, inside, weight, field, np.empty((3, WIDTH), field.dtype),
                     force)
 
 
-@kernel(parallel=True)
-def _mode_sums(spectrum, coupling, spread_x, spread_y, spread_z, share, sums):
-    """Per plane of k_x: Σ U_k and Σ U_k [3 − 2(1 + k²/4α²)], U_k = ½ g |Q|²; share: how many k."""
-    for x in numba.prange(spectrum.shape[0]):
-        energy, virial = 0.0, 0.0
+@kernel
+def _mode_sums(spectrum, coupling, spread_x, spread_y, spread_z, share):
+    """Σ U_k and Σ U_k [3 − 2(1 + k²/4α²)], U_k = ½ g |Q|²; share: how many k."""
+    energy, virial = 0.0, 0.0
+    for x in range(spectrum.shape[0]):
         for y in range(spectrum.shape[1]):
             for z in range(spectrum.shape[2]):
                 re, im = np.float64(spectrum[x, y, z].real), np.float64(spectrum[x, y, z].imag)
@@ -184,8 +173,7 @@ def _mode_sums(spectrum, coupling, spread_x, spread_y, spread_z, share, sums):
                 spread = spread_x[x] + spread_y[y] + spread_z[z]
                 energy += one
                 virial += one * (3.0 - 2.0 * (1.0 + spread))
-        sums[x, 0] = energy
-        sums[x, 1] = virial
+    return energy, virial
 
 
 class MeshEwald:
@@ -215,7 +203,7 @@ class MeshEwald:
         self._splines = (np.empty(count, np.int32), np.empty((count, 3), np.int32),
                          np.empty((count, 3), dtype), np.empty((count, 3, WIDTH), dtype))
         self._field = np.zeros((nx, ny + WIDTH, nz + WIDTH), dtype)
-        self._density = self._field[:, :ny, :nz]
+        self._density, self._margin = self._field[:, :ny, :nz], self._field[:, :ny, nz:]
         self._share = np.full(nz // 2 + 1, 2.0)
         self._share[0] = 1.0
         if nz % 2 == 0:
@@ -251,15 +239,12 @@ class MeshEwald:
         _spread(place, self._box, self.charge, self.mesh, self._taps, self._taylor, *self._planes,
                 *self._splines, self._field)
         spectrum = scipy.fft.rfftn(self._density)
-        sums = self._sums(spectrum) if energies else None
+        sums = (_mode_sums(spectrum, self._coupling, *self._spreads, self._share)
+                if energies else None)
         spectrum *= self._coupling
-        potential = scipy.fft.irfftn(spectrum, self._shape, norm="forward", overwrite_x=True)
-        _gather(potential, self.mesh, self._scale, self._taps, self._taylor, self.charge,
+        self._density[:] = scipy.fft.irfftn(spectrum, self._shape, norm="forward",
+                                            overwrite_x=True)
+        self._margin[:] = self._density[:, :, :WIDTH]  # past the end a row begins again
+        _gather(self.mesh, self._scale, self._taps, self._taylor, self.charge,
                 *self._splines, self._field, force)
         return sums
-
-    def _sums(self, spectrum):
-        sums = np.empty((len(spectrum), 2))
-        _mode_sums(spectrum, self._coupling, *self._spreads, self._share, sums)
-        energy, virial = sums.sum(axis=0)
-        return float(energy), float(virial)

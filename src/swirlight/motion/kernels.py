@@ -3,6 +3,8 @@
 Every loop runs over a fixed number of chunks of bodies, serially or on threads, and adds the
 sums of the chunks in order: the same bits for any number of threads. Threads pay only for
 many bodies (`PARALLEL_FROM`); the two forms of a loop share its body and give the same bits.
+numba numbers the turns of a loop on threads in unsigned integers, with which the body would be
+compiled once more: hence `np.int64(c)`.
 
 Sums go into rows laid out as a Ledger. Forces and torques are laboratory vectors; an array
 without rows stands for a source that is not there.
@@ -12,7 +14,7 @@ import math
 
 import numpy as np
 
-from swirlight.compiled import CHUNKS, kernel, numba
+from swirlight.compiled import CHUNKS, INNER, kernel, numba
 from swirlight.motion.ledger import (
     BATH,
     BATH_WORK,
@@ -39,19 +41,19 @@ class Workspace:
         self.parallel = bodies >= PARALLEL_FROM
 
 
-@kernel
+@kernel(**INNER)
 def _limits(chunk, chunks, n):
     return chunk * n // chunks, (chunk + 1) * n // chunks
 
 
-@kernel
+@kernel(**INNER)
 def _add_in_order(sums, ledger):
     for chunk in range(sums.shape[0]):
         for k in range(sums.shape[1]):
             ledger[k] += sums[chunk, k]
 
 
-@kernel
+@kernel(**INNER)
 def _first(broken):
     for chunk in range(broken.shape[0]):
         if broken[chunk] >= 0:
@@ -62,7 +64,7 @@ def _first(broken):
 # --- kick ---------------------------------------------------------------------------------
 
 
-@kernel
+@kernel(**INNER)
 def _kick_chunk(chunk, velocity, spin, orientation, mass, inverse_inertia, pair_force,
                 pair_torque, light_force, light_torque, bias_force, bias_torque, h, sums, broken):
     start, end = _limits(chunk, sums.shape[0], velocity.shape[0])
@@ -136,8 +138,9 @@ def _kick_serial(velocity, spin, orientation, mass, inverse_inertia, pair_force,
 def _kick_parallel(velocity, spin, orientation, mass, inverse_inertia, pair_force, pair_torque,
                    light_force, light_torque, bias_force, bias_torque, h, sums, broken, ledger):
     for c in numba.prange(sums.shape[0]):
-        _kick_chunk(c, velocity, spin, orientation, mass, inverse_inertia, pair_force, pair_torque,
-                    light_force, light_torque, bias_force, bias_torque, h, sums, broken)
+        _kick_chunk(np.int64(c), velocity, spin, orientation, mass, inverse_inertia, pair_force,
+                    pair_torque, light_force, light_torque, bias_force, bias_torque, h, sums,
+                    broken)
     _add_in_order(sums, ledger)
     return _first(broken)
 
@@ -161,7 +164,7 @@ def kick(state, system, pair, light, bias, interval, work, ledger):
 # --- drift --------------------------------------------------------------------------------
 
 
-@kernel
+@kernel(**INNER)
 def _drift_chunk(chunk, chunks, position, velocity, orientation, spin, kinds, inverse_inertia, t):
     start, end = _limits(chunk, chunks, position.shape[0])
     for i in range(start, end):
@@ -184,7 +187,8 @@ def _drift_serial(position, velocity, orientation, spin, kinds, inverse_inertia,
 @kernel(parallel=True)
 def _drift_parallel(position, velocity, orientation, spin, kinds, inverse_inertia, t, chunks):
     for c in numba.prange(chunks):
-        _drift_chunk(c, chunks, position, velocity, orientation, spin, kinds, inverse_inertia, t)
+        _drift_chunk(np.int64(c), chunks, position, velocity, orientation, spin, kinds,
+                     inverse_inertia, t)
 
 
 def drift(state, system, kinds, interval, parallel=False):
@@ -197,7 +201,7 @@ def drift(state, system, kinds, interval, parallel=False):
 # --- the bath of Langevin dynamics -----------------------------------------------------------
 
 
-@kernel
+@kernel(**INNER)
 def _bath_chunk(chunk, velocity, spin, orientation, mass, inertia, inverse_inertia, keep, heat,
                 move, turn, noise, sums):
     start, end = _limits(chunk, sums.shape[0], velocity.shape[0])
@@ -251,8 +255,8 @@ def _bath_serial(velocity, spin, orientation, mass, inertia, inverse_inertia, ke
 def _bath_parallel(velocity, spin, orientation, mass, inertia, inverse_inertia, keep, heat, move,
                    turn, noise, sums, ledger):
     for c in numba.prange(sums.shape[0]):
-        _bath_chunk(c, velocity, spin, orientation, mass, inertia, inverse_inertia, keep, heat,
-                    move, turn, noise, sums)
+        _bath_chunk(np.int64(c), velocity, spin, orientation, mass, inertia, inverse_inertia, keep,
+                    heat, move, turn, noise, sums)
     _add_in_order(sums, ledger)
 
 
