@@ -9,7 +9,7 @@ import io
 
 import numpy as np
 
-from swirlight.run.estimate import half_width, mean_and_error
+from swirlight.analysis.statistics import half_width, mean_and_error
 from swirlight.store.durable import write_bytes
 
 ODD = {"color": "#1b4965", "linestyle": "-", "linewidth": 2.0}

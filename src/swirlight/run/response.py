@@ -11,16 +11,15 @@ fallen below 1e-4 of its peak, or the end of the stage.
 from dataclasses import dataclass
 
 import numpy as np
-from scipy import stats
 
+from swirlight.analysis.statistics import MANY, half_width, mean_and_error, starts_needed
+from swirlight.analysis.twins import even_odd
 from swirlight.light.exposure import exposed
-from swirlight.run.estimate import even_odd, half_width, mean_and_error
 from swirlight.units import HBAR
 
 SIGNALS = {"light_impulse": "hbar", "angular_momentum": "hbar", "alignment": ""}
 SHOWN = 2000  # rows of a curve; more would only fill memory
 DETECTED = "clear detection"
-MANY = 1000  # starts: a number above it is no advice
 CLEAR, HINT = 0.001, 0.05  # p of the odd part that is called a detection, and a hint
 
 
@@ -153,18 +152,7 @@ def verdict(figures):
         return "no response: the twins are identical"
     if figures["p"] < CLEAR:
         return DETECTED
-    needed = starts_needed(figures)
+    scatter = figures["error"] * np.sqrt(starts)
+    needed = max(starts + 1, starts_needed(figures["value"], scatter, CLEAR))
     more = "" if needed > MANY else f"; if it is this large, some {needed} starts would tell"
     return ("a hint" if figures["p"] < HINT else "not told from zero") + more
-
-
-def starts_needed(figures):
-    """Starts after which p would be `CLEAR`, were mean and scatter those seen so far."""
-    needed = figures["starts"]
-    scatter = figures["error"] * np.sqrt(figures["starts"])
-    while needed <= MANY:
-        t = abs(figures["value"]) / scatter * np.sqrt(needed)
-        if 2 * stats.t.sf(t, needed - 1) < CLEAR:
-            break
-        needed += 1 + needed // 20
-    return needed

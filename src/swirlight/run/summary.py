@@ -3,8 +3,8 @@
 import numpy as np
 
 from swirlight import __version__, units
+from swirlight.analysis.statistics import blocking_error, mean_and_error
 from swirlight.config import config_hash
-from swirlight.run.estimate import mean_and_error
 from swirlight.run.picture import draw_response
 from swirlight.run.response import at_the_end_of_light, collect, curves, end_of_light, open_all
 from swirlight.store.durable import write_json
@@ -90,20 +90,6 @@ def _averages(run, exposures, bodies):
             value, error = series.mean(), blocking_error(series)
         found[name] = {"value": float(value), "error": error, "unit": unit, "n": len(per_start)}
     return found
-
-
-def blocking_error(series):
-    """Standard error of a correlated series' mean.
-
-    Flyvbjerg & Petersen, J. Chem. Phys. 91, 461 (1989). Blocks are paired until there are fewer
-    than 16; the largest estimate counts, which is never too small by more than its own
-    scatter. NaN for fewer than 16 numbers.
-    """
-    series, best = np.asarray(series, float), np.nan
-    while len(series) >= 16:
-        best = np.fmax(best, series.std(ddof=1) / np.sqrt(len(series)))
-        series = 0.5 * (series[0 : 2 * (len(series) // 2) : 2] + series[1::2][: len(series) // 2])
-    return float(best)
 
 
 def _ledgers(run, exposures, bodies):
