@@ -19,6 +19,7 @@ _HOME = {
     "launch": "swirlight.run.launch",
     "resume": "swirlight.run.launch",
     "open_run": "swirlight.store.run",
+    "spectrum": "swirlight.results.spectrum",
 }
 __all__ = ["__version__", *_HOME]
 

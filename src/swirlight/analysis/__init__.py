@@ -1,0 +1,1 @@
+"""Pure functions of arrays: correlations, spectra, statistics. No files."""

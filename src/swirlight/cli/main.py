@@ -14,6 +14,7 @@ from swirlight.cli.convert import convert
 from swirlight.cli.launch import launch, resume
 from swirlight.cli.schema import schema
 from swirlight.cli.species import species
+from swirlight.cli.spectrum import spectrum
 from swirlight.cli.status import status
 from swirlight.cli.verify import verify
 from swirlight.errors import InputError, StopRequested, SwirlightError
@@ -27,7 +28,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     rich_markup_mode=None,
 )
-for command in (check, launch, resume, status, species, convert, verify, schema):
+for command in (check, launch, resume, status, spectrum, species, convert, verify, schema):
     app.command()(command)
 
 

@@ -21,6 +21,7 @@ def species(
 
     Example: swirlight species acetonitrile --picture acetonitrile.png
     """
+    from swirlight.cli.picture import picture_path
     from swirlight.errors import InputError
     from swirlight.species.describe import describe, library_text, species_text
     from swirlight.species.library import library_names, load_species
@@ -35,12 +36,8 @@ def species(
         return
     found = load_species(name)
     if picture is not None:
-        if picture.suffix not in (".png", ".svg", ".pdf"):
-            raise InputError(f"--picture {picture}: needs a name that ends in .png, .svg or .pdf")
-        if not picture.absolute().parent.is_dir():
-            raise InputError(f"--picture {picture}: there is no folder {picture.parent}")
         from swirlight.species.picture import draw_species
 
-        draw_species(found, picture)
+        draw_species(found, picture_path(picture))
         typer.echo(f"picture: {picture}", err=True)
     typer.echo(json.dumps(describe(found), indent=2) if as_json else species_text(found))

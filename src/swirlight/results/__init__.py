@@ -1,0 +1,1 @@
+"""From a run to result objects: arrays, errors, units, notes. No printing, no drawing."""

@@ -1,0 +1,1 @@
+"""Figures and pages; matplotlib is imported when something is drawn."""

@@ -1,0 +1,184 @@
+"""The trajectories that a spectrum is made from, and their correlation functions."""
+
+import numpy as np
+
+from swirlight.analysis import spectra
+from swirlight.errors import InputError
+from swirlight.results.spectral import Curve, Spectrum
+from swirlight.store.run import KINDS
+
+SHARE = 8  # the longest lag is this part of the record when nothing is said
+FEWEST, PIECES = 4, 8  # pieces of the record of a single start, for its errors
+FADED = 0.05  # of C(0): below it a correlation counts as over
+
+
+class Source:
+    """The trajectories of one kind that count, and how correlation functions are taken.
+
+    run : Run; kind; window; longest_lag : [ps] or None for a share of the record.
+    wanted : the name of the recorded quantity whose clock holds.
+    Raises InputError when there is nothing to read, or the lag does not fit.
+    """
+
+    def __init__(self, run, kind, wanted, window, longest_lag):
+        if window not in spectra.WINDOWS:
+            raise InputError(f"no window {window!r}; there are {', '.join(spectra.WINDOWS)}")
+        self.run, self.kind, self.window = run, kind, window
+        self.groups = complete_starts(run, kind)
+        self.first = self.groups[0][0]
+        series = quantity(self.first, wanted)
+        self.interval, self.frames = series.interval, len(series)
+        self.lags = self._lags(longest_lag)
+        self.resolution = spectra.resolution(window, self.longest_lag)
+        self.frequencies, self.size = spectra.grid(self.lags, self.interval, self.resolution)
+        self.temperature = float(np.mean([np.mean(t["temperature"]) for g in self.groups
+                                          for t in g]))
+        self._said = []
+        self.bodies, self.volume = len(self.first.mass), float(np.prod(self.first.box))
+
+    longest_lag = property(lambda self: self.lags * self.interval)
+    starts = property(lambda self: len(self.groups))
+
+    @property
+    def pieces(self):
+        """Into how many pieces each record is cut for the errors."""
+        possible = min(PIECES, self.frames // (2 * self.lags))
+        return 1 if self.starts > 1 or possible < FEWEST else possible
+
+    def note(self, sentence):
+        """Say something of this source in the notes."""
+        self._said.append(sentence)
+
+    def _lags(self, longest):
+        share = self.frames // SHARE
+        lags = share if longest is None else round(longest / self.interval)
+        if not 4 <= lags <= self.frames // 2:
+            raise InputError(
+                f"longest_lag: {lags * self.interval:.4g} ps does not fit the record, which has"
+                f" {self.frames} frames, {self.interval:g} ps apart: at least 4 frames and at most"
+                " half of it")
+        return lags
+
+    @property
+    def driven(self):
+        """Why this kind is no equilibrium liquid, "" if it is one."""
+        light = self.first.parameters.get("light")
+        if light:
+            return "light acts in it"
+        return "a bias field acts in it" if self.run.config.bias_field is not None else ""
+
+    def correlations(self, read, summed=True):
+        """(C of the mean over starts (lags, ...), samples (n, lags, ...)).
+
+        read : (Trajectory) -> iterable of blocks (frames, bodies, components); the mean over
+        bodies is taken, and the sum over components where `summed`.
+        n samples: one a start, or pieces of the record of a single one.
+        """
+        whole, parts = [], []
+        for group in self.groups:
+            found = [self._of_one(t, read, (1, self.pieces)) for t in group]
+            whole.append(np.mean([f[0][0] for f in found], axis=0))
+            parts.append(np.mean([f[1] for f in found], axis=0))
+        found = [np.array(whole).mean(axis=0), np.array(whole) if self.starts > 1 else parts[0]]
+        return [c.sum(axis=-1) for c in found] if summed else found
+
+    def _of_one(self, trajectory, read, counts):
+        """For each count of pieces: (pieces, lags, ...)."""
+        sums, bodies = [0.0] * len(counts), 0
+        for block in read(trajectory):
+            bodies += block.shape[1]
+            for i, count in enumerate(counts):
+                long = len(block) // count
+                sums[i] = sums[i] + np.array([
+                    spectra.autocorrelation(block[k * long:(k + 1) * long], self.lags).sum(axis=1)
+                    for k in range(count)])
+        trajectory.close()
+        return [s / bodies for s in sums]
+
+    def curve(self, mean, parts, function, unit, meaning, smooth=True):
+        """Curve of a function of correlation functions, linear or not, with jackknife errors.
+
+        mean, parts : of `correlations`. function : (lags, samples) -> (F, samples), of windowed
+        ones where `smooth`.
+        """
+        def apply(c):
+            c = np.moveaxis(c, 0, -1)
+            return function(spectra.windowed(c, self.window) if smooth else c)
+
+        return Curve(apply(mean[None])[:, 0], jackknife_error(parts, apply), unit, meaning)
+
+    def figures(self, mean, parts, functions):
+        """{name: (value, error, unit)} of {name: (function as of `curve`, one number, unit)}."""
+        curves = {name: self.curve(mean, parts, f, unit, "") for name, (f, unit)
+                  in functions.items()}
+        return {name: (float(c.values[0]), float(c.errors[0]), c.unit)
+                for name, c in curves.items()}
+
+    def notes(self, mean):
+        """What holds for every spectrum; mean : (lags,) a correlation function without window."""
+        said = [f"window {self.window}, longest lag {self.longest_lag:.4g} ps: a sharp line is"
+                f" {self.resolution:.3g} THz ({self.resolution * spectra.WAVENUMBER:.3g} cm^-1)"
+                " wide"]
+        if self.starts == 1:
+            said.append(f"one start: errors from {self.pieces} pieces of its record, too small"
+                        " where the liquid remembers for longer than a piece"
+                        if self.pieces > 1 else f"one start, its record shorter than"
+                        f" {2 * FEWEST} longest lags: no errors")
+        left = np.abs(mean[-max(self.lags // 20, 1):]).mean() / mean[0]
+        if left > FADED:
+            said.append(f"at the longest lag the correlation is still {100 * left:.0f} % of its"
+                        " first value: structure narrower than the resolution is the window's")
+        stages = self.first.parameters["stages"]
+        bath = stages[max(stages, key=lambda name: int(name.split("-")[0]))]["thermostat"]
+        if bath != "none":
+            said.append(f"thermostat {bath} in the recorded stage: it damps the motion seen here")
+        return said + self._said
+
+    def result(self, of, label, curves, notes, figures=None, **more):
+        """The Spectrum."""
+        return Spectrum(of, label, self.kind, self.frequencies, curves, self.starts, self.window,
+                        self.longest_lag, self.resolution, figures or {}, tuple(notes), **more)
+
+
+def complete_starts(run, kind):
+    """[[Trajectory of each carrier phase] of each start], only starts that are complete.
+
+    Raises InputError when there are none.
+    """
+    if kind not in KINDS:
+        raise InputError(f"no kind {kind!r}; there are {', '.join(KINDS)}")
+    there = [e for e in run.exposures if e.kind == kind]
+    phases = sorted({e.phase for e in there})
+    groups = []
+    for start in sorted({e.start for e in there}):
+        group = [run[kind, start, p] for p in phases if (kind, start, p) in run]
+        if len(group) == len(phases) and all(t.complete for t in group):
+            groups.append(group)
+    if not groups:
+        known = ", ".join(dict.fromkeys(e.kind for e in run.exposures)) or "nothing"
+        raise InputError(f"{run.path}: no complete {kind} trajectory; it has {known}")
+    return groups
+
+
+def jackknife_error(parts, function):
+    """Standard error of function(mean of parts), (F,); NaN for a single part.
+
+    parts : (n, lags); function : (n, lags) -> (F, n). Complex: of both parts of the number.
+    Source: Efron & Tibshirani, An Introduction to the Bootstrap (1993), ch. 11 (from memory).
+    """
+    n = len(parts)
+    if n < 2:
+        nothing = function(parts)[:, 0]
+        return np.full_like(nothing, np.nan * (1 + 1j) if np.iscomplexobj(nothing) else np.nan)
+    without = function((n * parts.mean(axis=0) - parts) / (n - 1))
+    away = without - without.mean(axis=1, keepdims=True)
+    real, imaginary = (np.sqrt((n - 1) / n * (p**2).sum(axis=1)) for p in (away.real, away.imag))
+    return real + 1j * imaginary if np.iscomplexobj(away) else real
+
+
+def quantity(trajectory, name):
+    """A Series; raises InputError where it was not recorded."""
+    if name not in trajectory:
+        raise InputError(f"{trajectory.path}: {name} was not recorded; it has"
+                         f" {', '.join(trajectory.names)}")
+    return trajectory[name]
