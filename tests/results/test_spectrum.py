@@ -13,8 +13,7 @@ from swirlight.analysis import spectra
 from swirlight.cli.main import run as command
 from swirlight.config import load_config
 from swirlight.errors import InputError
-from swirlight.report.spectra import spectrum_text, spectrum_values
-from swirlight.results.source import jackknife_error
+from swirlight.report.spectra import _with_error, spectrum_text, spectrum_values
 from swirlight.rotation import rotation_matrix
 from swirlight.run.launch import launch
 from swirlight.sample import build_system
@@ -260,18 +259,20 @@ def test_one_start_in_a_short_record_has_no_errors(water):
     assert spectrum_values(s)["curves"]["permittivity"]["real_errors"][0] is None
 
 
-def test_jackknife_of_a_mean_is_its_standard_error():
-    parts = np.random.default_rng(1).standard_normal((9, 4))
-    np.testing.assert_allclose(jackknife_error(parts, lambda p: p.T),
-                               parts.std(axis=0, ddof=1) / 3, rtol=1e-12)
-
-
 def test_to_xarray_has_named_axes_and_units(dark):
     pytest.importorskip("xarray")
     data = swirlight.spectrum(dark).to_xarray()
     assert data.permittivity.dims == ("frequency",) and data.absorption.units == "cm^-1"
     assert data.frequency.units == "THz" and data.wavenumber.units == "cm^-1"
     assert data.attrs["label"] == "complex permittivity" and "permittivity_error" in data
+
+
+@pytest.mark.parametrize("value, error, text", [
+    (33.378, 2.09, "33.4 ± 2.1"), (0.0, 0.0, "0"), (4.36e-61, 3.1e-62, "(4.36 ± 0.31)e-61"),
+    (139.2, 10.4, "139 ± 10"), (5.0, np.nan, "5"), (1.00000000012, 2e-10, "1 ± 2e-10"),
+])
+def test_numbers_are_printed_as_their_errors_allow(value, error, text):
+    assert _with_error(value, error) == text
 
 
 @pytest.mark.parametrize("of, kind", [("dipole", "plus"), ("transient", "plus")])

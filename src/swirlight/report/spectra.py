@@ -44,6 +44,8 @@ def _with_error(value, error):
     if not np.isfinite(error) or error == 0.0:
         return f"{value:.4g}"
     size = max(abs(value), error)
+    if error < 1e-5 * size:
+        return f"{value:.7g} ± {error:.1g}"
     power = int(np.floor(np.log10(size)))
     power = 0 if -3 <= power < 5 else power
     digits = max(0, 1 - int(np.floor(np.log10(error / 10.0**power))))

@@ -3,6 +3,7 @@
 import numpy as np
 
 from swirlight.analysis import spectra
+from swirlight.analysis.statistics import function_of_means
 from swirlight.errors import InputError
 from swirlight.results.spectral import Curve, Spectrum
 from swirlight.store.run import KINDS
@@ -98,14 +99,22 @@ class Source:
     def curve(self, mean, parts, function, unit, meaning, smooth=True):
         """Curve of a function of correlation functions, linear or not, with jackknife errors.
 
-        mean, parts : of `correlations`. function : (lags, samples) -> (F, samples), of windowed
-        ones where `smooth`.
+        mean, parts : of `correlations`. function : (lags, ...) -> (F, ...), of windowed ones where
+        `smooth`.
         """
         def apply(c):
-            c = np.moveaxis(c, 0, -1)
-            return function(spectra.windowed(c, self.window) if smooth else c)
+            """(..., lags) -> (..., F), a complex curve as its real and imaginary parts."""
+            c = np.moveaxis(c, -1, 0)
+            found = function(spectra.windowed(c, self.window) if smooth else c)
+            whole = np.iscomplexobj(found)
+            return np.moveaxis(np.concatenate([found.real, found.imag]) if whole else found, 0, -1)
 
-        return Curve(apply(mean[None])[:, 0], jackknife_error(parts, apply), unit, meaning)
+        values, errors = apply(mean), np.nan * apply(mean)
+        if len(parts) > 1:
+            _, errors = function_of_means(parts, apply)
+        if np.iscomplexobj(function(mean)):
+            values, errors = (x[:len(x) // 2] + 1j * x[len(x) // 2:] for x in (values, errors))
+        return Curve(values, errors, unit, meaning)
 
     def figures(self, mean, parts, functions):
         """{name: (value, error, unit)} of {name: (function as of `curve`, one number, unit)}."""
@@ -158,22 +167,6 @@ def complete_starts(run, kind):
         known = ", ".join(dict.fromkeys(e.kind for e in run.exposures)) or "nothing"
         raise InputError(f"{run.path}: no complete {kind} trajectory; it has {known}")
     return groups
-
-
-def jackknife_error(parts, function):
-    """Standard error of function(mean of parts), (F,); NaN for a single part.
-
-    parts : (n, lags); function : (n, lags) -> (F, n). Complex: of both parts of the number.
-    Source: Efron & Tibshirani, An Introduction to the Bootstrap (1993), ch. 11 (from memory).
-    """
-    n = len(parts)
-    if n < 2:
-        nothing = function(parts)[:, 0]
-        return np.full_like(nothing, np.nan * (1 + 1j) if np.iscomplexobj(nothing) else np.nan)
-    without = function((n * parts.mean(axis=0) - parts) / (n - 1))
-    away = without - without.mean(axis=1, keepdims=True)
-    real, imaginary = (np.sqrt((n - 1) / n * (p**2).sum(axis=1)) for p in (away.real, away.imag))
-    return real + 1j * imaginary if np.iscomplexobj(away) else real
 
 
 def quantity(trajectory, name):

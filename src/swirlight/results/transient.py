@@ -4,6 +4,7 @@ import numpy as np
 
 from swirlight import units
 from swirlight.analysis import spectra
+from swirlight.analysis.statistics import mean_and_error
 from swirlight.errors import InputError
 from swirlight.results.source import complete_starts, quantity
 from swirlight.results.spectral import Curve, Spectrum
@@ -90,12 +91,8 @@ def _odd(group, name):
 
 
 def _errors(samples):
-    """(F,) complex standard errors of the mean over starts; NaN for one start."""
-    samples = np.array(samples)
-    n = len(samples)
-    if n < 2:
-        return np.full(samples.shape[1], np.nan * (1 + 1j))
-    return (samples.real.std(axis=0, ddof=1) + 1j * samples.imag.std(axis=0, ddof=1)) / np.sqrt(n)
+    """(F,) standard errors of the mean over starts, of real and imaginary part."""
+    return mean_and_error(np.real(samples))[1] + 1j * mean_and_error(np.imag(samples))[1]
 
 
 def _notes(times, moment, pumps, probes, top, given):
