@@ -19,6 +19,9 @@ _HOME = {
     "launch": "swirlight.run.launch",
     "resume": "swirlight.run.launch",
     "open_run": "swirlight.store.run",
+    "correlate": "swirlight.results.correlate",
+    "correlation_map": "swirlight.results.correlate",
+    "helicity_signature": "swirlight.results.correlate",
     "spectrum": "swirlight.results.spectrum",
 }
 __all__ = ["__version__", *_HOME]

@@ -1,4 +1,4 @@
-"""Series as xarray arrays; the only module that needs the extra `data`."""
+"""Series and results as xarray arrays; the only module that needs the extra `data`."""
 
 import numpy as np
 
@@ -37,3 +37,16 @@ def data_array(series):
             coordinates[name] = np.arange(length)
     variable = xarray.Variable(series.dimensions, data, {**units, **series.attributes})
     return xarray.DataArray(variable, coords=coordinates, name=series.name)
+
+
+def dataset(arrays, axes, unit, attributes):
+    """An `xarray.Dataset` of result arrays that share their axes.
+
+    arrays : {name: array}; axes : {name: (places along it, their unit or None)}, in order;
+    unit : of the arrays, None without.
+    """
+    units = {} if unit is None else {"units": unit}
+    coordinates = {name: (name, places, {} if of is None else {"units": of})
+                   for name, (places, of) in axes.items()}
+    return xarray.Dataset({name: (tuple(axes), array, units) for name, array in arrays.items()},
+                          coordinates, attributes)
