@@ -145,12 +145,15 @@ def blocking_error(series):
     Flyvbjerg & Petersen, J. Chem. Phys. 91, 461 (1989). Blocks are paired until there are fewer
     than 16; the largest estimate counts, which is never too small by more than its own
     scatter. NaN for fewer than 16 numbers.
+
+    series : (n,), or (n, ...) for several side by side.
     """
-    series, best = np.asarray(series, float), np.nan
+    series = np.asarray(series, float)
+    best = np.full(series.shape[1:], np.nan)
     while len(series) >= 16:
-        best = np.fmax(best, series.std(ddof=1) / np.sqrt(len(series)))
+        best = np.fmax(best, series.std(axis=0, ddof=1) / np.sqrt(len(series)))
         series = 0.5 * (series[0 : 2 * (len(series) // 2) : 2] + series[1::2][: len(series) // 2])
-    return float(best)
+    return best if best.ndim else float(best)
 
 
 def starts_needed(mean, scatter, level=0.001, power=0.5, most=MANY):

@@ -254,11 +254,11 @@ def _by_lag(samples, origins):
 def _blocked(samples):
     """(lags, n) errors from (pieces, lags, n); a piece without an origin for a lag is NaN."""
     errors = np.full(samples.shape[1:], np.nan)
-    there = ~np.isnan(samples[..., 0])
-    for count in np.unique(there.sum(axis=0)):
-        lags = np.flatnonzero(there.sum(axis=0) == count)
-        for lag in lags:
-            errors[lag] = [blocking_error(s) for s in samples[there[:, lag], lag].T]
+    there = ~np.isnan(samples).all(axis=2)  # of each lag: pieces next to one another
+    first, count = there.argmax(axis=0), there.sum(axis=0)
+    for begin, length in np.unique(np.stack([first, count], axis=1), axis=0):
+        lags = np.flatnonzero((first == begin) & (count == length))
+        errors[lags] = blocking_error(samples[begin : begin + length, lags])
     return errors
 
 
