@@ -269,6 +269,33 @@ def test_free_linear_rotor_has_a_line_at_zero_alone():
     assert g[below].sum() / g.sum() > 0.99
 
 
+def test_free_asymmetric_top_has_the_lines_of_its_elliptic_functions():
+    """ω_x, ω_y, ω_z = cn, sn, dn of a turning body: odd multiples of 1/4K for cn and sn.
+
+    Fourier series of Jacobi's functions: Abramowitz & Stegun 16.23 (from memory); the amplitudes
+    are those of Euler's equations at any energy, so one value of m is enough.
+    """
+    from scipy.special import ellipj, ellipk
+
+    m, rate, interval = 0.8, 2 * np.pi * 1.1, 0.02
+    k, quarter = np.sqrt(m), ellipk(m)
+    nome = np.exp(-np.pi * ellipk(1 - m) / quarter)
+    start = np.linspace(0, 4 * quarter, 64, endpoint=False)
+    sn, cn, _, _ = ellipj(rate * interval * np.arange(3000)[:, None] + start, m)
+    lags = 1500
+    width = spectra.resolution("hann", lags * interval)
+    f, size = spectra.grid(lags, interval, width)
+    line, n = rate / (4 * quarter), np.arange(4)
+    for x, shape in ((sn, 1 / (1 - nome ** (2 * n + 1))), (cn, 1 / (1 + nome ** (2 * n + 1)))):
+        c = spectra.windowed(spectra.autocorrelation(x, lags).mean(axis=1), "hann")
+        g = spectra.density_of_states(c, interval, size)
+        seen = np.array([g[np.abs(f - p * line) < 8 * width].sum() * f[1]
+                         for p in (1, 3, 5, 7)])
+        power = 0.5 * (2 * np.pi / (k * quarter) * nome ** (n + 0.5) * shape) ** 2
+        np.testing.assert_allclose(seen, power / power.sum(), atol=3e-4)
+        assert seen.sum() > 0.999
+
+
 # --- transient ----------------------------------------------------------------------------
 
 

@@ -14,6 +14,7 @@ from swirlight.cli.main import run as command
 from swirlight.config import load_config
 from swirlight.errors import InputError
 from swirlight.report.spectra import _with_error, spectrum_text, spectrum_values
+from swirlight.results.spectrum import _angular_velocities
 from swirlight.rotation import rotation_matrix
 from swirlight.run.launch import launch
 from swirlight.sample import build_system
@@ -32,6 +33,25 @@ stages:
 exposures: {kinds: [dark], starts: 3, spacing: 0.2 ps}
 record: {every: 20 fs, vectors: [orientation, angular_momentum, angular_velocity],
          totals_every: 20 fs}
+"""
+SALT = """
+title: a little molten salt
+seed: 7
+sample:
+  species: [{use: cation.yaml, count: 16}, {use: anion.yaml, count: 16}]
+  density: 1.3 g/cm^3
+  temperature: 1300 K
+forces: {cutoff: 0.5 nm, electrostatics: damped-shifted}
+stages:
+  - {name: settle, length: 0.4 ps, timestep: 2 fs, thermostat: {method: langevin, friction: 2 /ps}}
+  - {name: observe, length: 1 ps}
+exposures: {kinds: [dark], starts: 1}
+record: {every: 20 fs, vectors: [position], totals_every: 10 fs}
+"""
+ION = """
+name: NAME
+source: invented for a test
+sites: [{label: I, mass: 30 u, at: 0 0 0 nm, charge: CHARGE e, sigma: 0.3 nm, epsilon: 0.5 kJ/mol}]
 """
 PROBED = """
 title: pump and probe
@@ -72,8 +92,7 @@ def probed(tmp_path_factory):
 @pytest.fixture(scope="module")
 def water(tmp_path_factory):
     text = DARK.replace("acetonitrile", "water").replace("0.777", "0.997") \
-        .replace("4 fs", "2 fs").replace("0.65", "0.45").replace("starts: 3", "starts: 1") \
-        .replace("orientation, angular_momentum, angular_velocity", "orientation, angular_momentum")
+        .replace("4 fs", "2 fs").replace("0.65", "0.45").replace("starts: 3", "starts: 1")
     return made(tmp_path_factory.mktemp("water"), text)
 
 
@@ -149,7 +168,7 @@ def test_librations_of_a_linear_body(dark):
 
 
 def test_librations_of_water_by_axis(water):
-    """Momenta alone serve; axes come from the body's own inertia: the lightest is the fastest."""
+    """The axis of the smallest moment librates fastest."""
     s = swirlight.spectrum(water, "libration", longest_lag="0.14 ps")
     assert list(s.curves) == ["x", "y", "z"]
     assert any("body frame" in note for note in s.notes)
@@ -183,6 +202,52 @@ def test_kerr_asks_which_polarizability_is_meant(dark, monkeypatch):
     red, blue = (swirlight.spectrum(dark, "kerr", wavelength=w) for w in ("800 nm", "410 nm"))
     np.testing.assert_allclose(blue.values, 4 * red.values, rtol=1e-12)
     assert "polarizability at 800 nm" in red.notes
+
+
+def test_ions_conduct(tmp_path):
+    """σ(ω) at one frequency and ε with the static part split off, by plain sums in SI units."""
+    for name, charge in (("cation", "0.8"), ("anion", "-0.8")):
+        (tmp_path / f"{name}.yaml").write_text(ION.replace("NAME", name).replace("CHARGE", charge))
+    run = made(tmp_path, SALT)
+    s = swirlight.spectrum(run, "dipole", window="triangle", longest_lag="0.1 ps")
+    current = [np.diff(t.total_dipole[:], axis=0) / 10e-15 for t in run]
+    lags, step = 10, 10e-15
+    c = np.mean([[np.mean((j**2).sum(1)) - 0.5 * np.mean(((j[k:] - j[: len(j) - k])**2).sum(1))
+                  for k in range(lags)] for j in current], axis=0) * (1 - np.arange(lags) / lags)
+    kelvin = np.mean([t.temperature[:].mean() for t in run])
+    factor = 1 / (3 * np.prod(run["dark", 0].box) * 1e-27 * 1.380649e-23 * kelvin)
+
+    def sigma(omega):
+        wave = np.exp(1j * omega * step * np.arange(lags))
+        return factor * step * (c @ wave - 0.5 * c[0]) / np.sinc(omega * step / 2 / np.pi) ** 2
+
+    value, error, unit = s.figures["static conductivity"]
+    np.testing.assert_allclose(value, sigma(0.0).real, rtol=1e-9)
+    assert unit == "S/m" and error > 0
+    omega = 2 * np.pi * s.frequencies[9] * 1e12
+    np.testing.assert_allclose(
+        s.values[9], 1 + 1j * (sigma(omega) - sigma(0.0)) / (8.8541878188e-12 * omega), rtol=1e-8)
+    assert any("static conductivity split off" in note for note in s.notes)
+    assert any("do not trust it here" in note for note in s.notes)  # no Ewald sum
+    with pytest.raises(InputError, match="which. none can rotate"):
+        swirlight.spectrum(run, "libration")
+
+
+class Recorded(dict):
+    """Some of what a trajectory has recorded."""
+
+
+def test_momenta_and_velocities_tell_the_same_librations(water):
+    """Body-frame angular velocity by either road, for a body with three different moments."""
+    trajectory, body = water["dark", 0], build_system(water.config).species[0]
+    momenta = Recorded({n: trajectory[n] for n in ("orientation", "angular_momentum")})
+    momenta.species = trajectory.species
+    one, two = (np.concatenate(list(_angular_velocities(t, 0, body)), axis=1)
+                for t in (trajectory, momenta))
+    turn = rotation_matrix(trajectory.orientation[:])
+    plain = np.einsum("fnji,fnj->fni", turn, trajectory.angular_velocity[:])
+    np.testing.assert_allclose(one, plain, atol=2e-6 * np.abs(plain).max())
+    np.testing.assert_allclose(two, plain, atol=2e-6 * np.abs(plain).max())
 
 
 def test_driven_liquids_have_power_spectra_only(probed):

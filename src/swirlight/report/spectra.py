@@ -65,7 +65,7 @@ def _chosen(frequencies, rows):
 
 def spectrum_values(found):
     """Plain values for programs; numbers that are not there are None."""
-    return {
+    values = {
         "of": found.of, "label": found.label, "kind": found.kind, "starts": found.starts,
         "window": found.window, "longest_lag": {"value": found.longest_lag, "unit": "ps"},
         "resolution": {"value": found.resolution, "unit": "THz"},
@@ -76,6 +76,10 @@ def spectrum_values(found):
         "curves": {name: _curve(curve) for name, curve in found.curves.items()},
         "notes": list(found.notes),
     }
+    if found.response is not None:
+        values["response"] = {"lag": {"values": _plain(found.lags), "unit": "ps"},
+                              **_curve(found.response)}
+    return values
 
 
 def _curve(curve):
@@ -93,10 +97,15 @@ def _plain(numbers):
 
 
 def draw_spectrum(found, path):
-    """Write the picture: one panel a unit, bands of one standard error, THz below, cm^-1 above.
+    """Write the picture. path : .png, .svg or .pdf."""
+    image, kind = io.BytesIO(), path.suffix[1:]
+    spectrum_figure(found).savefig(image, format=kind, dpi=130,
+                                   metadata={"Software": None} if kind == "png" else None)
+    write_bytes(path, image.getvalue())
 
-    path : .png, .svg or .pdf.
-    """
+
+def spectrum_figure(found):
+    """A matplotlib Figure: a panel a curve, bands of one standard error, THz below, cm^-1 above."""
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
 
@@ -123,26 +132,19 @@ def draw_spectrum(found, path):
     above = rows[0].secondary_xaxis(
         "top", functions=(lambda f: f * WAVENUMBER, lambda k: k / WAVENUMBER))
     above.set_xlabel("wavenumber / cm$^{-1}$")
-    image = io.BytesIO()
-    kind = path.suffix[1:]
-    figure.savefig(image, format=kind, dpi=130,
-                   metadata={"Software": None} if kind == "png" else None)
-    write_bytes(path, image.getvalue())
+    return figure
 
 
 def _panels(found):
-    """[(label of the axis, [(name, values, errors)])], curves of one unit together."""
+    """[(label of the axis, [(name, values, errors)])]; librations share one."""
     panels = {}
     for name, curve in found.curves.items():
-        title = name if np.iscomplexobj(curve.values) or found.of == "transient" else curve.unit
-        if len(found.curves) == 1 or found.of == "dipole":
-            title = name
-        label = title.replace("_", " ") + (
-            f" / ({_raised(curve.unit)})" if curve.unit and title != curve.unit else "")
-        lines = panels.setdefault(label, [])
+        title = "density of states" if found.of == "libration" else name.replace("_", " ")
+        unit = f" / ({_raised(curve.unit)})" if curve.unit else ""
+        lines = panels.setdefault(title + unit, [])
         for part, values, errors in _parts(curve):
-            word = {"": name, "'": "real part", "''": "imaginary part"}[part]
-            lines.append((word.replace("_", " "), values, np.nan_to_num(errors)))
+            word = {"": name.replace("_", " "), "'": "real part", "''": "imaginary part"}[part]
+            lines.append((word, values, np.nan_to_num(errors)))
     return list(panels.items())
 
 

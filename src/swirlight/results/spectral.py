@@ -71,8 +71,13 @@ class Spectrum:
             about = {"units": curve.unit, "long_name": curve.meaning}
             found[name] = ("frequency", curve.values, about)
             found[f"{name}_error"] = ("frequency", curve.errors, {"units": curve.unit})
+        if self.response is not None:
+            found["response"] = ("lag", self.response.values, {"units": self.response.unit})
+            found["response_error"] = ("lag", self.response.errors, {"units": self.response.unit})
         coordinates = {"frequency": ("frequency", self.frequencies, {"units": "THz"}),
                        "wavenumber": ("frequency", self.wavenumbers, {"units": "cm^-1"})}
+        if self.response is not None:
+            coordinates["lag"] = ("lag", self.lags, {"units": "ps"})
         return xarray.Dataset(found, coordinates, {
             "of": self.of, "label": self.label, "kind": self.kind, "starts": self.starts,
             "window": self.window, "resolution": f"{self.resolution:.6g} THz",

@@ -205,8 +205,8 @@ def _collective(trajectory, tensors):
 
 
 def _libration(run, kind, window, lag, species=None):
-    source = Source(run, kind, "orientation", window, lag)
     index, chosen = _rotating(run, species)
+    source = Source(run, kind, "orientation", window, lag)
     names = ("across the axis",) if chosen.freedom == LINEAR else ("x", "y", "z")
 
     def read(trajectory):
