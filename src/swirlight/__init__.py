@@ -23,6 +23,8 @@ _HOME = {
     "correlation_map": "swirlight.results.correlate",
     "helicity_signature": "swirlight.results.correlate",
     "spectrum": "swirlight.results.spectrum",
+    "linear_response": "swirlight.results.linear",
+    "linear_range": "swirlight.results.linear",
 }
 __all__ = ["__version__", *_HOME]
 

@@ -209,15 +209,25 @@ def test_each_spectral_component_delivers_s3_over_omega():
 
 
 def test_noise_lag():
-    """A kernel of 40 frames in noise of 1e-3 of it: cut where it has fallen below 2 errors."""
+    """A kernel of 40 frames in noise of 1e-3 of it: kept to twice where it is 2 errors, 2e-3."""
     random = np.random.default_rng(3)
-    kernel = np.exp(-np.arange(400) / 40.0)
-    starts = kernel + 4e-3 * random.standard_normal((16, 400))
-    lag = kubo.noise_lag(starts)
-    assert 180 < lag < 330  # e^{−s/40} = 2e-3 at 249
-    assert kubo.noise_lag(starts[:1]) == 320
-    assert kubo.noise_lag(np.outer(np.linspace(0.9, 1.1, 16), 1 + 0 * kernel)) == 320
-    assert kubo.noise_lag(random.standard_normal((16, 400))) < 40
+    kernel = np.exp(-np.arange(1000) / 40.0)
+    starts = kernel + 4e-3 * random.standard_normal((16, 1000))
+    assert 2 * 180 < kubo.noise_lag(starts) < 2 * 330  # e^{−s/40} = 2e-3 at 249
+    late = np.arange(1000) / 40.0 * kernel  # one that begins at 0, as ⟨A Ȧ⟩ does
+    starts = late + 4e-3 * random.standard_normal((16, 1000))
+    assert 2 * 250 < kubo.noise_lag(starts) < 2 * 450  # s e^{−s} = 2e-3 at s = 8.4
+    assert kubo.noise_lag(starts[:1]) == 800
+    assert kubo.noise_lag(np.outer(np.linspace(0.9, 1.1, 16), np.ones(1000))) == 800
+
+
+def test_refined_kernels():
+    """Splines of fourth order: sin to h⁴/384."""
+    s = 0.1 * np.arange(40)
+    fine = kubo.refined(np.array([np.sin(s), np.cos(s)]), 5)
+    assert fine.shape == (2, 196)
+    assert np.allclose(fine[0], np.sin(0.02 * np.arange(196)), atol=1e-6)
+    assert kubo.refined(s, 1) is s
 
 
 def test_spin_estimate_holds_what_torque_gave():

@@ -18,7 +18,7 @@ from .rotors import ALPHA_D, ALPHA_S, GYRATION, INTERVAL, Z
 
 LENGTH = 6.56
 DARK = 12.0
-COUNTS = [pytest.param(4000, id="few"), pytest.param(100_000, id="many", marks=pytest.mark.slow)]
+COUNTS = [pytest.param(3000, id="few"), pytest.param(40_000, id="many", marks=pytest.mark.slow)]
 BATCH = 5000  # bodies held at once
 G_Z, A_ZZ = rotors.along(False, GYRATION), rotors.along(True, ALPHA_S)
 

@@ -19,8 +19,14 @@ all origins and, as the liquid is isotropic, over all axes of the laboratory.
 
 import numpy as np
 from scipy import fft
+from scipy.interpolate import CubicSpline
+from scipy.ndimage import uniform_filter1d
 
 from swirlight.rotation import rotation_matrix
+
+FEWEST = 4  # lags of a kernel
+CLEAR = 5.0  # standard errors by which a kernel stands out of its noise somewhere
+QUIET = 2.0  # mean square of a kernel over its standard error where it is noise: 1 expected
 
 
 def rotation_and_spin(orientation, momentum, inverse_inertia):
@@ -138,25 +144,42 @@ def convolve(kernel, drive, interval):
     return out
 
 
-def noise_lag(kernels, sigma=2.0):
-    """Number of lags after which the mean over starts no longer stands out of its noise.
+def refined(kernel, factor):
+    """A kernel (..., S ≥ 4) on `factor` times finer lags, (..., factor (S − 1) + 1).
 
-    kernels : (starts, T). The first lag from which |mean| stays below `sigma` standard errors
-    for a quarter of that lag (and at least five frames); at most four fifths of T, where the
-    origins run out. One start has no noise to tell: four fifths of T.
+    By cubic splines; light that changes faster than the frames then acts when it does.
+    """
+    if factor == 1:
+        return kernel
+    lags = np.arange(kernel.shape[-1])
+    return CubicSpline(lags, kernel, axis=-1)(np.arange(factor * lags[-1] + 1) / factor)
+
+
+def noise_lag(kernels):
+    """Number of lags to keep: twice those after which the mean is no more than its noise.
+
+    kernels : (starts, T). z is the mean over its standard error. Behind its largest value, the
+    first lag from which the mean square of z over a further quarter of the lag (at least five
+    frames) is below `QUIET`, where noise alone has 1; and as much again. A kernel that nowhere
+    stands out (|z| < `CLEAR`) is not cut: what it amounts to is not known, and the errors
+    show it. At most four fifths of T, where the origins run out; that too with one start.
     """
     starts, length = kernels.shape
-    most = max(2, 4 * length // 5)
+    most = min(max(FEWEST, 4 * length // 5), length)
     if starts < 2:
         return most
-    error = kernels.std(axis=0, ddof=1) / np.sqrt(starts)
-    loud = np.flatnonzero(np.abs(kernels.mean(axis=0))[:most] > sigma * error[:most])
-    quiet_from = 1  # no kernel is cut before its first lag
-    for lag in loud:
-        if lag - quiet_from > max(5, quiet_from // 4):
-            break
-        quiet_from = lag + 1
-    return int(min(max(2, quiet_from), most))
+    variance = uniform_filter1d(kernels.var(axis=0, ddof=1), max(5, length // 20))
+    error = np.sqrt(variance / starts) + np.finfo(float).tiny
+    z = np.abs(kernels.mean(axis=0)) / error
+    lag = int(np.argmax(z[:most]))
+    if z[lag] < CLEAR:
+        return most
+    sums = np.concatenate([[0.0], np.cumsum(z**2)])
+    for quiet in range(lag + 1, most):
+        last = min(quiet + max(5, quiet // 4), length)
+        if sums[last] - sums[quiet] < QUIET * (last - quiet):
+            return int(np.clip(2 * quiet, min(FEWEST, length), most))
+    return most
 
 
 def polarise(susceptibility, field, interval):

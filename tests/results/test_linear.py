@@ -1,0 +1,149 @@
+"""The zero-intensity limit of whole runs: prediction from the dark beside what was driven.
+
+Bodies do not interact here, which the code does not know; figures of a liquid are slow tests.
+Where a ratio of driven over predicted is held against 1, the tolerance is 4 of its standard
+errors, which the bootstrap gives, and 3 % for the next order in intensity.
+"""
+
+import shutil
+
+import h5py
+import numpy as np
+import pytest
+
+import swirlight as sw
+from swirlight import units
+from swirlight.errors import InputError
+from swirlight.results.linear import linear_range, linear_response
+from swirlight.results.observables import OBSERVABLES
+from swirlight.rotation import rotation_matrix
+
+from . import gas
+
+AVERAGED = [name for name in OBSERVABLES if name != "light_work"]
+LARGEST_ERROR = {"angular_momentum": 0.1, "light_impulse": 0.02}  # of the ratio; others 0.25
+
+
+@pytest.fixture(scope="module")
+def optical(tmp_path_factory):
+    return gas.launch(tmp_path_factory.mktemp("optical"))
+
+
+@pytest.fixture(scope="module")
+def terahertz(tmp_path_factory):
+    return gas.launch(tmp_path_factory.mktemp("terahertz"), gas.TERAHERTZ, starts=4)
+
+
+@pytest.mark.parametrize("name", AVERAGED)
+def test_driven_and_predicted_agree(optical, name):
+    r = linear_response(optical, name)
+    assert r.label == "linear response" and r.starts == 6 and r.part == OBSERVABLES[name].part
+    assert abs(r.ratio - 1) < 4 * r.ratio_error + 0.03
+    assert r.ratio_error < LARGEST_ERROR.get(name, 0.25)
+    assert r.parted_at is None
+    assert len(r.times) == len(r.values) == len(r.driven) == len(r.errors) == 151
+
+
+def test_impulse_of_averaged_light_needs_no_fluctuations(optical):
+    """∫(Tr αD/6) G dt of a slab, (α∥ + α⊥)/6 of a rod, mean over bodies.
+
+    Trapezoid sums of a Gaussian are exact; 27.449 V/cm is |𝓔| of 1 W/cm² to five digits.
+    """
+    r = linear_response(optical, "light_impulse")
+    amplitude = 27.449e2 * np.sqrt(6e11) * units.VOLT_PER_METRE
+    area = np.sqrt(np.pi / (4 * np.log(2))) * 0.2
+    mean = (0.7 * (0.6 + 0.9) + 0.3 * 1.5) / 6
+    exact = mean * units.CUBIC_ANGSTROM * amplitude**2 * area / units.HBAR
+    assert r.values[-1] == pytest.approx(exact, rel=1e-4)
+    assert not r.errors.any() and r.lag == 0
+
+
+def test_driven_curves_are_those_of_the_files(optical):
+    """The odd part of the gyration along the beam, body by body from the recorded orientations."""
+    r = linear_response(optical, "gyration")
+    system = sw.build(sw.load_config(optical.path / "config.yaml")).system
+    g = system.species[0].responses[0].gyration
+    odd = 0.0
+    for start in range(6):
+        seen = [(rotation_matrix(optical[kind, start].orientation[:, :70]) @ g)[..., 2]
+                for kind in ("plus", "minus")]
+        odd = odd + (seen[0] - seen[1]).mean(axis=1) / 2 / 6 / np.linalg.norm(g)
+    assert np.allclose(r.driven, odd, atol=1e-9)
+
+
+def test_resolved_light(terahertz):
+    """Impulse and work are exact at their order; the spin is an estimate and says so."""
+    for name in ("light_impulse", "light_work"):
+        r = linear_response(terahertz, name)
+        assert abs(r.ratio - 1) < 4 * r.ratio_error + 0.03
+        assert r.ratio_error < 0.2 and r.label == "linear response"
+    assert linear_response(terahertz, "total_angular_momentum").label == "estimate"
+    with pytest.raises(InputError, match="not closed"):
+        linear_response(terahertz, "alignment")
+
+
+def test_strong_light_is_no_longer_linear(optical, tmp_path):
+    """g|G|/4kT of 5: orientation saturates, so driven over predicted falls far below 1."""
+    strong = gas.OPTICAL.replace("6e11", "6e13")
+    runs = [gas.launch(tmp_path, strong, "4 ps", 5), optical.path]
+    found = linear_range(runs, "gyration")
+    weak, strong = found.responses
+    assert weak.intensity == pytest.approx(6e11) and strong.intensity == pytest.approx(6e13)
+    assert found.departs_at == strong.intensity
+    assert strong.ratio < 0.7 and 0 < strong.parted_at < 1.5
+
+
+def test_longest_lag(optical):
+    whole, cut = (linear_response(optical, "angular_momentum", lag) for lag in (None, 0.1))
+    assert cut.lag == pytest.approx(0.16)  # lags 0 to 0.1 ps, and never fewer than four
+    assert cut.values[-1] == pytest.approx(0.0, abs=1e-12)
+    assert np.array_equal(cut.driven, whole.driven)
+
+
+def test_labelled(optical):
+    data = linear_response(optical, "alignment").to_xarray()
+    assert data.sizes == {"time": 151} and data.time.units == "ps"
+    assert set(data) == {"predicted", "predicted_error", "driven", "driven_error"}
+    assert data.attrs["label"] == "linear response"
+
+
+@pytest.fixture
+def copied(optical, tmp_path):
+    """A copy of the run, and a way to change its config."""
+    folder = tmp_path / "copy"
+    shutil.copytree(optical.path, folder)
+
+    def change(old, new):
+        text = (folder / "config.yaml").read_text()
+        assert old in text
+        (folder / "config.yaml").write_text(text.replace(old, new))
+        return folder
+
+    return change
+
+
+def test_what_has_no_meaning_is_refused(copied):
+    folder = copied("title:", "title:")
+    with pytest.raises(InputError, match="observable 'colour': expected one of"):
+        linear_response(folder, "colour")
+    with pytest.raises(InputError, match="second order"):
+        linear_response(folder, "light_work")
+    with h5py.File(folder / "dark-000.h5", "r+") as file:
+        del file["particles/bodies/angular_momentum"]
+    with pytest.raises(InputError, match="angular_momentum was not recorded"):
+        linear_response(folder)
+    copied("in_kinds: exposed", "in_kinds: same")
+    with pytest.raises(InputError, match="no light that exposures act on"):
+        linear_response(folder)
+
+
+def test_bias_field_is_refused(copied):
+    folder = copied("stages:", "bias_field: {vector: 0 0 1e7 V/m}\nstages:")
+    with pytest.raises(InputError, match="bias field acts in the dark"):
+        linear_response(folder)
+
+
+def test_dark_runs_are_needed(copied):
+    folder = copied("  - dark\n", "")
+    with pytest.raises(InputError, match="no dark runs"):
+        linear_response(folder)
