@@ -12,12 +12,13 @@ response share starts, so that their difference is drawn jointly.
 """
 
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from scipy import stats
 
 from swirlight.analysis.kubo import FEWEST, noise_lag
-from swirlight.analysis.statistics import LEAST_STARTS, largest_t
+from swirlight.analysis.statistics import LEAST_STARTS, largest_t, mean_and_error
 from swirlight.errors import InputError
 from swirlight.results.dark import Subject
 from swirlight.results.observables import ALIASES, OBSERVABLES
@@ -26,6 +27,8 @@ from swirlight.store.run import open_run
 RESAMPLES = 400  # an error is then known to 4 %, less than a few starts leave of it
 LEVEL = 0.05  # p of "they agree at all times" below which they part
 BEYOND = 3.0  # combined standard errors at the time that is named
+BLOCK = 2_000_000  # numbers of a kind held at once
+WARM = 0.03  # by which the dark runs may be off the temperature in the formulas
 SHARE = 0.05  # of the largest prediction: less is looked at neither as response nor as parting
 
 
@@ -177,18 +180,21 @@ def _driven(subject, kind):
     return 0.5 * (plus + minus) - seen["dark"][:, totals], frames
 
 
-def _resampled(predict, kernels, driven, counts, rows):
+def _resampled(predict, kernels, driven, counts, rows, instants):
     """predicted (b, T) and driven (b, T) of starts weighted by counts (b, n)."""
     weights = counts / counts.sum(axis=1, keepdims=True)
-    predicted = predict({n: weights @ k for n, k in kernels.items()})[..., rows]
-    predicted = np.broadcast_to(predicted, (len(counts), predicted.shape[-1]))
+    predicted, some = np.empty((len(counts), len(rows))), max(1, BLOCK // instants)
+    for begin in range(0, len(counts), some):
+        part = slice(begin, begin + some)
+        predicted[part] = predict({n: weights[part] @ k for n, k in kernels.items()})[..., rows]
     return predicted, None if driven is None else weights @ driven
 
 
 def _result(subject, name, predict, kernels, driven, rows, lag, notes):
     kind, starts = OBSERVABLES[name], len(subject.starts.numbers)
-    whole, lit = (x if x is None else x[0] for x in
-                  _resampled(predict, kernels, driven, np.ones((1, starts)), rows))
+    drawn_with = partial(_resampled, predict, kernels, driven, rows=rows,
+                         instants=len(subject.instants))
+    whole, lit = (x if x is None else x[0] for x in drawn_with(np.ones((1, starts))))
     nothing = np.full(len(rows), np.nan)
     errors, lit_errors, between, ratio_error = nothing, nothing, nothing, np.nan
     p, parted, ratio = np.nan, None, np.nan
@@ -196,7 +202,7 @@ def _result(subject, name, predict, kernels, driven, rows, lag, notes):
     if starts > 1:
         random = np.random.default_rng(starts)
         counts = random.multinomial(starts, np.full(starts, 1 / starts), RESAMPLES)
-        drawn, lit_drawn = _resampled(predict, kernels, driven, counts, rows)
+        drawn, lit_drawn = drawn_with(counts)
         spread = np.sqrt(starts / (starts - 1))  # a resample varies by (n − 1)/n too little
         errors = spread * drawn.std(axis=0) if kernels else np.zeros(len(rows))
         if lit is not None:
@@ -205,7 +211,7 @@ def _result(subject, name, predict, kernels, driven, rows, lag, notes):
             weights = _weights(between, there)
             ratio = float(_ratio(lit, whole, weights))
             ratio_error = float(spread * np.std(_ratio(lit_drawn, drawn, weights)))
-            without = _resampled(predict, kernels, driven, 1 - np.eye(starts), rows)
+            without = drawn_with(1.0 - np.eye(starts))
             pseudo = starts * (lit - whole) - (starts - 1) * (without[1] - without[0])
             p = min(largest_t(pseudo[:, there], random)[0], _p_of_ratio(ratio, ratio_error, starts))
             p = float(min(1.0, 2.0 * p))  # the better of two tests
@@ -259,7 +265,22 @@ def _notes(subject, parts, kernels, lags):
         if lags[n] >= 4 * length // 5:
             said.append(f"the {n.rstrip(' 0123456789')} kernel has not died away in the record:"
                         f" what is older than {lags[n] * subject.interval:.3g} ps is left out")
+    off, error = _off_temperature(subject)
+    if abs(off) > WARM and abs(off) > 3 * error:
+        said.append(f"rotation in the dark runs is {100 * off:+.0f} % off the temperature that kT"
+                    " is taken from: they were not in equilibrium")
     if starts < LEAST_STARTS:
         said.append(f"{starts} start{'s' * (starts > 1)}: "
                     + ("no errors" if starts == 1 else "the errors are rough themselves"))
     return tuple(said)
+
+
+def _off_temperature(subject):
+    """Rotational temperature of the dark runs over that of the config, less 1; its error."""
+    found = []
+    for start in subject.starts.numbers:
+        trajectory = subject.run["dark", start]
+        found.append(np.mean(trajectory["temperature_rotation"]))
+        trajectory.close()
+    mean, error, _ = mean_and_error(np.array(found) / subject.system.temperature - 1.0)
+    return float(mean), float(np.nan_to_num(error))
