@@ -19,7 +19,7 @@ from swirlight.analysis import kubo
 from swirlight.errors import InputError
 from swirlight.results import linear
 from swirlight.results.linear import linear_range, linear_response
-from swirlight.results.observables import OBSERVABLES
+from swirlight.results.linear_observables import OBSERVABLES
 from swirlight.rotation import rotation_matrix
 
 from . import gas

@@ -21,7 +21,7 @@ from swirlight.analysis.kubo import FEWEST, noise_lag
 from swirlight.analysis.statistics import LEAST_STARTS, largest_t, mean_and_error
 from swirlight.errors import InputError
 from swirlight.results.dark import Subject
-from swirlight.results.observables import ALIASES, OBSERVABLES
+from swirlight.results.linear_observables import ALIASES, OBSERVABLES
 from swirlight.store.run import open_run
 
 RESAMPLES = 400  # an error is then known to 4 %, less than a few starts leave of it
@@ -100,7 +100,7 @@ class LinearRange:
 def linear_response(run, observable="angular_momentum", longest_lag=None):
     """The LinearResponse of a run.
 
-    run : Run, or path of one. observable : a name of `observables.OBSERVABLES`, or of the
+    run : Run, or path of one. observable : a name of `linear_observables.OBSERVABLES`, or of the
     recorded total. longest_lag : where kernels are cut [ps]; None: once they are noise.
     Raises InputError for an unknown observable, one that dark runs cannot tell, or runs about
     which linear response says nothing (no dark kind, a bias field, nothing recorded).
