@@ -11,6 +11,7 @@ import pytest
 
 from swirlight.errors import InputError, RunError
 from swirlight.rotation import body_axes
+from swirlight.store.parts import Parts
 from swirlight.store.run import Exposure, open_run
 from swirlight.store.trajectory import Trajectory
 from tests.store import engine
@@ -216,6 +217,35 @@ def test_xarray(under_way):
     np.testing.assert_array_equal(amplitude.sel(part="imaginary"), t.light_amplitude[..., 1])
     assert t.orientation.to_xarray().dims == ("time", "body", "quaternion")
     np.testing.assert_array_equal(t.axis_x.to_xarray()[3], t.axis_x[3])
+
+
+def test_a_trajectory_as_a_dataset_is_read_when_it_is_used(under_way, monkeypatch):
+    pytest.importorskip("xarray")
+    read, parts = [], Parts.read
+
+    def count(self, frames, rest=()):
+        block = parts(self, frames, rest)
+        read.append((self.dataset, block.size))
+        return block
+
+    monkeypatch.setattr(Parts, "read", count)
+    t = open_run(under_way)["minus", 0]
+    whole = t.to_xarray()
+    part = whole.torque.sel(component="z").isel(body=slice(0, 2), time_2=slice(1, 3))
+    later = (whole.torque.chunk(body=3) ** 2).sum("body")
+    assert read == [] and "torque" in repr(whole)
+    np.testing.assert_array_equal(part, t.torque[1:3, :2, 2])
+    assert read[0] == ("particles/bodies/torque/value", 4)
+    np.testing.assert_allclose(later, (t.torque[...] ** 2).sum(axis=1), rtol=1e-12)
+    # Three clocks; those of the position, which the orientation shares, come first.
+    assert whole.position.dims == whole.orientation.dims[:2] + ("component",)
+    assert whole.position.dims[0] == "time" and whole.torque.dims[0] == "time_2"
+    assert whole.temperature.dims == ("time_3",) == whole.light_amplitude.dims[:1]
+    np.testing.assert_array_equal(whole.time_2, t.torque.times)
+    np.testing.assert_array_equal(whole.step_3, t.temperature.steps)
+    assert whole.axis_z.dims == ("time", "body", "component")
+    assert list(whole.species.values[[0, -1]]) == ["leaning top (invented)", "argon"]
+    assert whole.torque.units == "kJ mol-1" and whole.attrs["complete"] == "false"
 
 
 def test_reading_needs_neither_numba_nor_matplotlib():

@@ -39,6 +39,25 @@ def data_array(series):
     return xarray.DataArray(variable, coords=coordinates, name=series.name)
 
 
+def trajectory_dataset(trajectory):
+    """An `xarray.Dataset` of all that a `Trajectory` holds or that follows from it, not read yet.
+
+    What is recorded as often as the first vector lies along `time`; what has another clock along
+    `time_2`, `time_3` … with its own steps.
+    """
+    clocks, found = {}, {}
+    for name in trajectory.readable:
+        array = data_array(trajectory[name])
+        number = clocks.setdefault(array.step.values.tobytes(), len(clocks) + 1)
+        if number > 1:
+            array = array.rename(time=f"time_{number}", step=f"step_{number}")
+        found[name.replace("/", "_")] = array
+    species = np.array(trajectory.species_names)[trajectory.species]
+    return xarray.Dataset(found, {"species": ("body", species)},
+                          {"name": trajectory.name, "box": trajectory.box, "box_units": "nm",
+                           "complete": str(trajectory.complete).lower()})
+
+
 def dataset(arrays, axes, unit, attributes):
     """An `xarray.Dataset` of result arrays that share their axes.
 

@@ -183,6 +183,15 @@ class Trajectory:
         """The config as resolved when it was written, or "" if there is none."""
         return str(self.parameters.get("config", ""))
 
+    def to_xarray(self):
+        """An `xarray.Dataset` of everything, with named axes, times and units (extra `data`).
+
+        Nothing is read before it is used; `.chunk()` makes dask arrays of it.
+        """
+        from swirlight.store.labelled import trajectory_dataset
+
+        return trajectory_dataset(self)
+
     def close(self):
         """Close the files; they are opened again when needed."""
         self._files.close()
