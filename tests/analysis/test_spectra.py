@@ -20,6 +20,11 @@ def ornstein_uhlenbeck(random, runs, frames, keep):
     return signal.lfilter([1.0], [1.0, -keep], noise, axis=1)
 
 
+def each(x, lags):
+    """(lags, n, p) autocorrelation of every one of n records, x (frames, n, p)."""
+    return np.stack([spectra.autocorrelation([x[:, [k]]], lags)[0] for k in range(x.shape[1])], 1)
+
+
 def debye(frequencies, chi, tau, high=1.0):
     return high + chi / (1 - 2j * np.pi * frequencies * tau)
 
@@ -73,7 +78,7 @@ def test_smooth_correlation_is_exact_where_it_is_resolved():
 def test_sum_rules_hold_to_rounding_for_any_data(name):
     """Static limit, (2/π)∫D''/ω dω = C_0, and the integral of a spectral density."""
     random = np.random.default_rng(5)
-    c = spectra.windowed(spectra.autocorrelation(random.standard_normal((500, 2)), 100), name)
+    c = spectra.windowed(each(random.standard_normal((500, 2, 1)), 100)[..., 0], name)
     interval, size = 0.02, 512
     d = spectra.relaxation_transform(c, interval, size)
     np.testing.assert_allclose(d[0], c[0], rtol=1e-13)
@@ -103,16 +108,23 @@ def test_real_part_follows_from_the_imaginary_one():
 
 
 def test_autocorrelation_against_the_double_loop():
-    x = np.random.default_rng(1).standard_normal((60, 2, 3))
-    slow = np.array([np.mean(x * x, axis=0) - 0.5 * np.mean((x[k:] - x[: 60 - k]) ** 2, axis=0)
-                     for k in range(25)])
-    np.testing.assert_allclose(spectra.autocorrelation(x, 25), slow, atol=1e-13)
+    x = np.random.default_rng(1).standard_normal((60, 4, 3))
+
+    def slow(first, last):
+        origins = [np.arange(first, min(last, 60 - k)) for k in range(10)]
+        return np.array([np.mean(x[first:last] ** 2, axis=(0, 1))
+                         - 0.5 * np.mean((x[t + k] - x[t]) ** 2, axis=(0, 1))
+                         for k, t in enumerate(origins)])
+
+    whole, parts = spectra.autocorrelation([x[:, :1], x[:, 1:]], 10, pieces=3)
+    np.testing.assert_allclose(whole, slow(0, 60), atol=1e-13)
+    np.testing.assert_allclose(parts, [slow(0, 20), slow(20, 40), slow(40, 60)], atol=1e-13)
 
 
 def test_autocorrelation_of_a_piece_of_a_slow_wave_has_no_kink():
     """A record that begins and ends anywhere: first differences vanish as k², not as k."""
-    x = np.cos(0.01 * np.arange(629))[:, None]
-    c = spectra.autocorrelation(x, 10)[:, 0]
+    x = np.cos(0.01 * np.arange(629))
+    c = each(x[:, None, None], 10)[:, 0, 0]
     np.testing.assert_allclose((c[0] - c)[1:] / np.arange(1, 10) ** 2, c[0] - c[1], rtol=0.1)
     plain = np.array([np.mean(x[: 629 - k] * x[k:]) for k in range(10)])
     assert abs(plain[1] - plain[0]) > 5 * (c[0] - c[1])
@@ -126,10 +138,10 @@ def test_debye_relaxation_from_a_noisy_dipole():
     interval, tau, moment, runs = 0.1, 2.0, 3.0, 64
     m = moment * ornstein_uhlenbeck(np.random.default_rng(7), runs, 4000, np.exp(-interval / tau))
     lags = 400
-    c = spectra.autocorrelation(np.moveaxis(m, 0, 1), lags).sum(axis=-1)
+    c = each(np.moveaxis(m, 0, 1), lags).sum(axis=-1)
     f, size = spectra.grid(lags, interval, spectra.resolution("none", lags * interval))
     eps = spectra.permittivity(c, interval, size, VOLUME, KELVIN).mean(axis=1)
-    each = spectra.permittivity(c, interval, size, VOLUME, KELVIN)
+    every = spectra.permittivity(c, interval, size, VOLUME, KELVIN)
     chi = 3 * moment**2 * spectra.dipole_strength(VOLUME, KELVIN)
     # What the estimator makes of the exact correlation; Debye's form but for ωΔt²/12τ.
     exact = 1 + chi * spectra.relaxation_transform(
@@ -137,7 +149,7 @@ def test_debye_relaxation_from_a_noisy_dipole():
     rows = np.arange(0, 200, 5)
     np.testing.assert_allclose(exact[rows], debye(f, chi, tau)[rows], atol=2e-3 * chi)
     for part in (np.real, np.imag):
-        error = part(each).std(axis=1, ddof=1)[rows] / np.sqrt(runs)
+        error = part(every).std(axis=1, ddof=1)[rows] / np.sqrt(runs)
         z = (part(eps) - part(exact))[rows] / np.where(error > 0, error, 1.0)
         assert np.abs(z).max() < 4.5
         assert 0.4 < np.sqrt(np.mean(z**2)) < 1.8  # correlated: about 10 are independent
@@ -173,7 +185,7 @@ def test_ions_give_drudes_conductivity_and_permittivity():
     j = ornstein_uhlenbeck(np.random.default_rng(3), runs, 40_000, np.exp(-fine / tau))
     m = np.cumsum(0.5 * fine * (j[:, 1:] + j[:, :-1]), axis=1)[:, ::every]
     interval, lags = fine * every, 120
-    c = spectra.autocorrelation(np.moveaxis(np.diff(m, axis=1) / interval, 0, 1), lags).sum(-1)
+    c = each(np.moveaxis(np.diff(m, axis=1) / interval, 0, 1), lags).sum(axis=-1)
     f, size = spectra.grid(lags, interval, 0.1)
     sigma = spectra.conductivity(c, interval, size, VOLUME, KELVIN)
     static = tau / (VOLUME * units.BOLTZMANN * KELVIN)
@@ -246,7 +258,7 @@ def test_harmonic_librator_shows_its_frequency_and_nothing_else():
     phase = random.uniform(0, 2 * np.pi, 200)
     omega = random.rayleigh(size=200) * np.cos(2 * np.pi * 2.0 * t[:, None] + phase)
     lags = 500
-    c = spectra.windowed(spectra.autocorrelation(omega, lags).mean(axis=1), "hann")
+    c = spectra.windowed(spectra.autocorrelation([omega[..., None]], lags)[0][:, 0], "hann")
     width = spectra.resolution("hann", 10.0)
     f, size = spectra.grid(lags, 0.02, width / 8)
     g = spectra.density_of_states(c, 0.02, size)
@@ -260,7 +272,7 @@ def test_harmonic_librator_shows_its_frequency_and_nothing_else():
 def test_free_linear_rotor_has_a_line_at_zero_alone():
     """Its angular velocity is conserved: half of the resolution's width, and nothing above."""
     omega = np.random.default_rng(8).standard_normal((1, 50, 3)) * np.ones((600, 1, 1))
-    c = spectra.windowed(spectra.autocorrelation(omega, 200).mean(axis=(1, 2)), "hann")
+    c = spectra.windowed(spectra.autocorrelation([omega], 200)[0].mean(axis=1), "hann")
     f, size = spectra.grid(200, 0.02, 0.05)
     g = spectra.density_of_states(c, 0.02, size)
     assert g.argmax() == 0
@@ -287,7 +299,7 @@ def test_free_asymmetric_top_has_the_lines_of_its_elliptic_functions():
     f, size = spectra.grid(lags, interval, width)
     line, n = rate / (4 * quarter), np.arange(4)
     for x, shape in ((sn, 1 / (1 - nome ** (2 * n + 1))), (cn, 1 / (1 + nome ** (2 * n + 1)))):
-        c = spectra.windowed(spectra.autocorrelation(x, lags).mean(axis=1), "hann")
+        c = spectra.windowed(spectra.autocorrelation([x[..., None]], lags)[0][:, 0], "hann")
         g = spectra.density_of_states(c, interval, size)
         seen = np.array([g[np.abs(f - p * line) < 8 * width].sum() * f[1]
                          for p in (1, 3, 5, 7)])

@@ -17,6 +17,7 @@ Windows     F. J. Harris, Proc. IEEE 66, 51 (1978) (names and shapes, from memor
 import numpy as np
 from scipy import fft
 
+from swirlight.analysis.correlation import lagged_sums
 from swirlight.errors import InputError
 from swirlight.units import (
     BOLTZMANN,
@@ -53,22 +54,37 @@ def resolution(window, longest_lag):
     return _WIDTHS[window] / longest_lag
 
 
-def autocorrelation(x, lags):
-    """(lags, ...) C_k = ⟨x²⟩ − ½⟨(x(t0 + kΔt) − x(t0))²⟩, component by component.
+def autocorrelation(blocks, lags, pieces=1):
+    """C_k = ⟨x²⟩ − ½⟨(x(t0 + kΔt) − x(t0))²⟩, component by component, mean over bodies.
 
     Each mean is over all origins that reach. Against the plain mean of x(t0) x(t0 + kΔt) this
     takes away the kink at k = 0 that the two ends of a finite record leave, which would be a
     tail of the loss at high frequencies; C_0 is ⟨x²⟩ of the whole record.
-    x : (frames, ...) real, frames ≥ lags. Nothing is subtracted.
+    blocks : iterable of (frames, bodies, p), frames > lags; nothing is subtracted.
+    Returns ((lags, p) of all origins, (pieces, lags, p) of the origins in each piece).
     """
-    x = np.asarray(x, float)
-    frames, k = len(x), np.arange(lags)
-    size = fft.next_fast_len(frames + lags, real=True)
-    products = fft.irfft(np.abs(fft.rfft(x, size, axis=0)) ** 2, size, axis=0)[:lags]
-    sums = np.concatenate([np.zeros_like(x[:1]), np.cumsum(x * x, axis=0)])
-    both = sums[frames - k] + sums[-1] - sums[k]  # of the squares at both ends of the pairs
-    return sums[-1] / frames - (0.5 * both - products) / (
-        frames - k).reshape(-1, *[1] * (x.ndim - 1))
+    squares = []
+
+    def pairs():
+        for x in blocks:
+            squares.append(np.einsum("fnp,fnp->fp", x, x, dtype=float))
+            yield x, x
+
+    sums = lagged_sums(pairs(), lags - 1, pieces)
+    products = np.diagonal(sums.products[:, lags - 1 :], axis1=2, axis2=3)
+    before = np.cumsum(np.concatenate([np.zeros_like(squares[0][:1]), sum(squares)]), axis=0)
+    whole = _without_kink(products.sum(axis=0, keepdims=True), sums.edges[[0, -1]], before)
+    return whole[0] / sums.bodies, _without_kink(products, sums.edges, before) / sums.bodies
+
+
+def _without_kink(products, edges, before):
+    """(pieces, lags, p) from Σ x(t0) x(t0 + k) and `before`, Σ x² of all frames before each."""
+    k = np.arange(products.shape[1])
+    low = edges[:-1, None]
+    high = np.minimum(edges[1:, None], len(before) - 1 - k)
+    both = before[high] - before[low] + before[high + k] - before[low + k]
+    mean = (before[edges[1:]] - before[edges[:-1]]) / np.diff(edges)[:, None]
+    return mean[:, None] - (0.5 * both - products) / (high - low)[..., None]
 
 
 def windowed(correlation, window):

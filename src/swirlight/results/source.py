@@ -75,26 +75,16 @@ class Source:
         bodies is taken, and the sum over components where `summed`.
         n samples: one a start, or pieces of the record of a single one.
         """
-        whole, parts = [], []
+        found = []
         for group in self.groups:
-            found = [self._of_one(t, read, (1, self.pieces)) for t in group]
-            whole.append(np.mean([f[0][0] for f in found], axis=0))
-            parts.append(np.mean([f[1] for f in found], axis=0))
-        found = [np.array(whole).mean(axis=0), np.array(whole) if self.starts > 1 else parts[0]]
-        return [c.sum(axis=-1) for c in found] if summed else found
-
-    def _of_one(self, trajectory, read, counts):
-        """For each count of pieces: (pieces, lags, ...)."""
-        sums, bodies = [0.0] * len(counts), 0
-        for block in read(trajectory):
-            bodies += block.shape[1]
-            for i, count in enumerate(counts):
-                long = len(block) // count
-                sums[i] = sums[i] + np.array([
-                    spectra.autocorrelation(block[k * long:(k + 1) * long], self.lags).sum(axis=1)
-                    for k in range(count)])
-        trajectory.close()
-        return [s / bodies for s in sums]
+            phases = [spectra.autocorrelation(read(t), self.lags, self.pieces) for t in group]
+            for trajectory in group:
+                trajectory.close()
+            found.append([np.mean(part, axis=0) for part in zip(*phases, strict=True)])
+        whole = np.array([c for c, _ in found])
+        parts = whole if self.starts > 1 else found[0][1]
+        means = [whole.mean(axis=0), parts]
+        return [c.sum(axis=-1) for c in means] if summed else means
 
     def curve(self, mean, parts, function, unit, meaning, smooth=True):
         """Curve of a function of correlation functions, linear or not, with jackknife errors.
