@@ -61,19 +61,19 @@ def test_permittivity_of_the_liquid(liquid, table):
     table("acetonitrile: static permittivity from the spectrum",
           f"{value:.1f} ± {error:.1f}", f"{fluctuation.mean():.1f} by fluctuations")
     # The laboratory's 35.7 (CRC Handbook polynomial, by chemicals 1.5.2) binds no model;
-    # three-site models of this dipole lie between 20 and 50.
-    assert 20 < value < 50
+    # 200 ps know ⟨M²⟩ to some 15 %. This holds the order of magnitude.
+    assert 15 < value < 60
 
     # f-sum rule, exact for rigid linear bodies by equipartition: (2/π)∫ω ε'' dω = 2Nμ²/3Vε0I.
-    # The window adds χ π²/2T² to it. What is left is the kinetic temperature of rotation of
-    # 4 starts (0.4 %), the step of 20 fs, and noise: 3 % in all.
+    # The window adds χ π²/2T² to it. Ṁ forgets itself in some 0.1 ps, so that 200 ps and three
+    # components know ⟨Ṁ²⟩ to √(2 · 0.2/600) = 2.6 %: three times that.
     omega, body = 2 * np.pi * s.frequencies, build_system(liquid.config).species[0]
     total = 2 / np.pi * np.trapezoid(omega * s.values.imag, omega) \
         - (value - 1) * np.pi**2 / 2 / s.longest_lag**2
     exact = 2 * 128 * (body.dipole**2).sum() / (
         3 * volume * 1e27 * units.VACUUM_PERMITTIVITY * body.inertia[0])
     table("acetonitrile: f-sum of the permittivity", f"{total:.1f}", f"{exact:.1f} /ps²")
-    np.testing.assert_allclose(total, exact, rtol=0.03)
+    np.testing.assert_allclose(total, exact, rtol=0.08)
 
     # The far-infrared band of the liquid has its maximum at 80 to 90 cm^-1 (from memory, no
     # page seen): a rigid model should show one broad band there and none elsewhere.

@@ -1,6 +1,7 @@
 """Spectra of little runs: what is computed, what is said, what is refused."""
 
 import json
+import shutil
 from dataclasses import replace
 from types import SimpleNamespace
 
@@ -300,8 +301,8 @@ def test_transient_permittivity_of_probe_twins(probed):
     ({"longest_lag": "1 nm"}, "is not the unit of a time"),
     ({"longest_lag": "1 ps"}, "longest_lag: 1 ps does not fit the record, which has 61 frames"),
     ({"longest_lag": "20 fs"}, "at least 4 frames"),
-    ({"kind": "plus"}, "no complete plus trajectory; it has dark"),
-    ({"kind": "bright"}, "no kind 'bright'"),
+    ({"kind": "plus"}, "kind plus: the run has dark"),
+    ({"kind": "bright"}, "kind bright: the run has dark"),
     ({"high_frequency": 0.9}, "a permittivity is at least 1"),
     ({"of": "libration", "species": "argon"}, "argon? acetonitrile can rotate"),
     ({"of": "transient"}, "dark has no probe"),
@@ -322,6 +323,18 @@ def test_one_start_in_a_short_record_has_no_errors(water):
     assert np.isnan(s.errors).all() and any("no errors" in note for note in s.notes)
     assert "±" not in spectrum_text(s)
     assert spectrum_values(s)["curves"]["permittivity"]["real_errors"][0] is None
+
+
+def test_only_complete_starts_count(dark, tmp_path):
+    copy = tmp_path / "run"
+    shutil.copytree(dark.path, copy)
+    (copy / "dark-001.h5").unlink()
+    s = swirlight.spectrum(swirlight.open_run(copy))
+    assert s.starts == 2 and "2 of 3 starts are complete and count" in s.notes
+    for start in (0, 2):
+        (copy / f"dark-{start:03d}.h5").unlink()
+    with pytest.raises(InputError, match="no start is complete yet, of 3"):
+        swirlight.spectrum(swirlight.open_run(copy))
 
 
 def test_to_xarray_has_named_axes_and_units(dark):

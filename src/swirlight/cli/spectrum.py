@@ -32,7 +32,7 @@ def spectrum(
         "--of", help="dipole: permittivity, absorption, index; kerr: optical-Kerr response;"
         " libration: angular velocities; transient: what a weak probe meets.")],
     kind: Annotated[str | None, typer.Option(
-        help="dark, plus or minus; left out: dark, or the only one.")] = None,
+        help="dark, plus or minus; left out: dark, or the first there is.")] = None,
     window: Annotated[Window, typer.Option(help="Of the correlation function.")] = Window.hann,
     longest_lag: Annotated[str | None, typer.Option(
         help='Of the correlation function, "10 ps"; left out: an eighth of the record.')] = None,

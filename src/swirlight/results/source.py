@@ -6,7 +6,7 @@ from swirlight.analysis import spectra
 from swirlight.analysis.statistics import function_of_means
 from swirlight.errors import InputError
 from swirlight.results.spectral import Curve, Spectrum
-from swirlight.store.run import KINDS
+from swirlight.results.starts import complete_starts
 
 SHARE = 8  # the longest lag is this part of the record when nothing is said
 FEWEST, PIECES = 4, 8  # pieces of the record of a single start, for its errors
@@ -25,7 +25,7 @@ class Source:
         if window not in spectra.WINDOWS:
             raise InputError(f"no window {window!r}; there are {', '.join(spectra.WINDOWS)}")
         self.run, self.kind, self.window = run, kind, window
-        self.groups = complete_starts(run, kind)
+        self.groups, self._said = trajectories(run, kind)
         self.first = self.groups[0][0]
         series = quantity(self.first, wanted)
         self.interval, self.frames = series.interval, len(series)
@@ -34,7 +34,6 @@ class Source:
         self.frequencies, self.size = spectra.grid(self.lags, self.interval, self.resolution)
         self.temperature = float(np.mean([np.mean(t["temperature"]) for g in self.groups
                                           for t in g]))
-        self._said = []
         self.bodies, self.volume = len(self.first.mass), float(np.prod(self.first.box))
 
     longest_lag = property(lambda self: self.lags * self.interval)
@@ -139,24 +138,19 @@ class Source:
                         self.longest_lag, self.resolution, figures or {}, tuple(notes), **more)
 
 
-def complete_starts(run, kind):
-    """[[Trajectory of each carrier phase] of each start], only starts that are complete.
+def trajectories(run, kind):
+    """([[Trajectory of each carrier phase] of each start that counts], notes).
 
     Raises InputError when there are none.
     """
-    if kind not in KINDS:
-        raise InputError(f"no kind {kind!r}; there are {', '.join(KINDS)}")
-    there = [e for e in run.exposures if e.kind == kind]
-    phases = sorted({e.phase for e in there})
-    groups = []
-    for start in sorted({e.start for e in there}):
-        group = [run[kind, start, p] for p in phases if (kind, start, p) in run]
-        if len(group) == len(phases) and all(t.complete for t in group):
-            groups.append(group)
-    if not groups:
-        known = ", ".join(dict.fromkeys(e.kind for e in run.exposures)) or "nothing"
-        raise InputError(f"{run.path}: no complete {kind} trajectory; it has {known}")
-    return groups
+    starts = complete_starts(run)
+    if kind not in starts.phases:
+        raise InputError(f"kind {kind}: the run has {', '.join(starts.phases)}")
+    if not starts.numbers:
+        raise InputError(f"{run.path}: no start is complete yet, of {starts.wanted}")
+    few = len(starts.numbers) < starts.wanted
+    notes = [f"{len(starts.numbers)} of {starts.wanted} starts are complete and count"] * few
+    return [[run[key] for key in starts.keys(kind, n)] for n in starts.numbers], notes
 
 
 def quantity(trajectory, name):

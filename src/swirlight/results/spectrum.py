@@ -20,6 +20,7 @@ from swirlight.errors import InputError
 from swirlight.light.response import choose_response
 from swirlight.results.source import Source, quantity
 from swirlight.results.spectral import Spectrum
+from swirlight.results.starts import complete_starts
 from swirlight.results.transient import transient
 from swirlight.rotation import rotation_matrix, to_body
 from swirlight.sample import build_system
@@ -39,7 +40,7 @@ def spectrum(run, of="dipole", kind=None, window="hann", longest_lag=None, **mor
     of : "dipole" (permittivity, absorption, refractive index), "kerr" (optical-Kerr
         response), "libration" (density of states of angular velocities), "transient" (the
         permittivity that a weak probe pulse meets).
-    kind : "dark", "plus" or "minus"; left out: dark, or the only one there is.
+    kind : "dark", "plus" or "minus"; left out: dark, or the first there is.
     window : "hann", "gaussian", "triangle" or "none", of the correlation function.
     longest_lag : of the correlation function, "10 ps"; left out: an eighth of the record.
     high_frequency : of dipole and transient: ε∞; left out: 1, as the bodies do not polarise.
@@ -55,8 +56,8 @@ def spectrum(run, of="dipole", kind=None, window="hann", longest_lag=None, **mor
             raise InputError(f"{name} says nothing about a spectrum of {of}"
                              + (f"; {', '.join(options)} would" if options else ""))
     if kind is None:
-        kinds = {e.kind for e in run.exposures}
-        kind = next(iter(kinds)) if len(kinds) == 1 else "dark"
+        kinds = complete_starts(run).phases
+        kind = "dark" if "dark" in kinds else next(iter(kinds))
     lag = None if longest_lag is None else units.parse_quantity(longest_lag, "time")
     return make(run, kind, window, lag, **{k: v for k, v in more.items() if v is not None})
 

@@ -6,7 +6,7 @@ from swirlight import units
 from swirlight.analysis import spectra
 from swirlight.analysis.statistics import mean_and_error
 from swirlight.errors import InputError
-from swirlight.results.source import complete_starts, quantity
+from swirlight.results.source import quantity, trajectories
 from swirlight.results.spectral import Curve, Spectrum
 
 BAND = 0.01  # of the largest |E(ω)|²: outside of it the probe says nothing
@@ -24,7 +24,7 @@ def transient(run, kind, window, lag, high_frequency=None):
     Raises InputError where the run has no such twins.
     """
     window = window if lag else "none"
-    groups = complete_starts(run, kind)
+    groups, said = trajectories(run, kind)
     first, phases = groups[0][0], len(groups[0])
     pump, probe = _pump_and_probe(first.parameters.get("light", {}), run, kind)
     if phases % 2:
@@ -48,7 +48,7 @@ def transient(run, kind, window, lag, high_frequency=None):
     frequencies, values, power = measured(moment.mean(axis=0))
     band = power > BAND
     errors = _errors([measured(m)[1][band] for m in moment])
-    notes = _notes(series.times, moment.mean(axis=0), pump, probe, top, high_frequency)
+    notes = said + _notes(series.times, moment.mean(axis=0), pump, probe, top, high_frequency)
     if lag:
         notes.append(f"window {window}, {lag:.4g} ps from the centre of the probe: a sharp line"
                      f" is {width:.3g} THz wide, and what answers later is left out")
