@@ -42,6 +42,7 @@ def test_the_numerical_rooms_load_no_files_models_or_terminals():
     "import swirlight; swirlight.load_config, swirlight.open_run, swirlight.load_species",
     "import swirlight.cli.main",
     "import swirlight.run.status",
+    "import swirlight; swirlight.spectrum",
 ])
 def test_light_doors_load_no_compiler(statement):
     assert not loaded_after(statement) & {"numba", "matplotlib", "distributed"}

@@ -63,16 +63,17 @@ def autocorrelation(blocks, lags, pieces=1):
     blocks : iterable of (frames, bodies, p), frames > lags; nothing is subtracted.
     Returns ((lags, p) of all origins, (pieces, lags, p) of the origins in each piece).
     """
-    squares = []
+    squares = 0.0  # of each frame
 
     def pairs():
+        nonlocal squares
         for x in blocks:
-            squares.append(np.einsum("fnp,fnp->fp", x, x, dtype=float))
+            squares = squares + np.einsum("fnp,fnp->fp", x, x, dtype=float)
             yield x, x
 
     sums = lagged_sums(pairs(), lags - 1, pieces)
     products = np.diagonal(sums.products[:, lags - 1 :], axis1=2, axis2=3)
-    before = np.cumsum(np.concatenate([np.zeros_like(squares[0][:1]), sum(squares)]), axis=0)
+    before = np.cumsum(np.concatenate([np.zeros_like(squares[:1]), squares]), axis=0)
     whole = _without_kink(products.sum(axis=0, keepdims=True), sums.edges[[0, -1]], before)
     return whole[0] / sums.bodies, _without_kink(products, sums.edges, before) / sums.bodies
 
