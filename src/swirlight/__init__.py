@@ -25,6 +25,7 @@ _HOME = {
     "spectrum": "swirlight.results.spectrum",
     "linear_response": "swirlight.results.linear",
     "linear_range": "swirlight.results.linear",
+    "response": "swirlight.results.response",
 }
 __all__ = ["__version__", *_HOME]
 

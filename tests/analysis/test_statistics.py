@@ -106,6 +106,7 @@ def test_largest_t_of_a_clear_signal_of_none_and_of_one_start():
     assert largest_t(np.zeros((5, 3)), random)[:3] == (1.0, 0.0, 0)
     assert largest_t(np.ones((5, 3)), random)[0] == 1 / 16
     assert np.isnan(largest_t(np.ones((1, 3)), random)[0])
+    assert np.isnan(largest_t(np.full((5, 3), np.nan), random)[0])
 
 
 @pytest.mark.parametrize(("mean", "scatter", "level", "power"),
@@ -123,7 +124,7 @@ def test_starts_needed_reach_what_they_promise(mean, scatter, level, power):
 def test_starts_needed_at_the_ends():
     assert starts_needed(1.0, 0.0) == 2
     assert starts_needed(0.0, 1.0, most=50) == starts_needed(0.001, 1.0, most=50) == 51
-    assert starts_needed(1.0, np.nan, most=50) == 51
+    assert starts_needed(1.0, np.nan, most=50) == starts_needed(np.nan, 1.0, most=50) == 51
 
 
 def test_blocking_error_of_white_and_of_correlated_noise():

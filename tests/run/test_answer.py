@@ -1,12 +1,14 @@
 """What a run says of its odd and even parts."""
 
-from swirlight.analysis.statistics import mean_and_error
-from swirlight.run.response import DETECTED, verdict
+from swirlight.analysis.statistics import mean_and_error, starts_needed
+from swirlight.run.answer import DETECTED, verdict
 
 
 def figures(values):
     mean, error, p = mean_and_error(values)
-    return {"value": float(mean), "error": float(error), "p": float(p), "starts": len(values)}
+    needed = starts_needed(float(mean), float(error) * len(values) ** 0.5)
+    return {"value": float(mean), "error": float(error), "p": float(p), "starts": len(values),
+            "starts_needed": needed}
 
 
 def test_verdicts():

@@ -98,12 +98,12 @@ def largest_t(values, random):
     values : (starts, times). Under the hypothesis the sign of a whole start is arbitrary, which
     holds exactly for half the difference of twins that could be exchanged.
     Returns (p, the largest |t|, index of its time, the smallest p so many starts can give);
-    of one start p and |t| are NaN.
+    of one start, and of values that are not numbers, p and |t| are NaN.
     """
     values = np.asarray(values, float)
     n = len(values)
-    if n < 2:
-        return np.nan, np.nan, 0, 1.0
+    if n < 2 or np.isnan(values).any():
+        return np.nan, np.nan, 0, smallest_p(n)
     t = np.abs(_t_of(np.ones((1, n)), values)[0])
     index = int(np.argmax(t))
     signs = _signs(n, random)
@@ -162,7 +162,7 @@ def starts_needed(mean, scatter, level=0.001, power=0.5, most=MANY):
     mean, scatter : true mean and standard deviation of one start; known only roughly where they
     were themselves measured with few. From the noncentral t distribution of two-sided tests.
     """
-    if mean == 0.0 or not np.isfinite(scatter):
+    if mean == 0.0 or not np.isfinite(mean) or not np.isfinite(scatter):
         return most + 1
     if scatter == 0.0:
         return 2

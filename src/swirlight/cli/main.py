@@ -13,6 +13,7 @@ from swirlight.cli.check import check
 from swirlight.cli.convert import convert
 from swirlight.cli.correlate import correlate
 from swirlight.cli.launch import launch, resume
+from swirlight.cli.response import response
 from swirlight.cli.schema import schema
 from swirlight.cli.species import species
 from swirlight.cli.spectrum import spectrum
@@ -29,8 +30,8 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     rich_markup_mode=None,
 )
-for command in (check, launch, resume, status, correlate, spectrum, species, convert, verify,
-                schema):
+for command in (check, launch, resume, status, response, correlate, spectrum, species, convert,
+                verify, schema):
     app.command()(command)
 
 

@@ -2,15 +2,18 @@
 
 import numpy as np
 
-from swirlight import __version__, units
+from swirlight import __version__
 from swirlight.analysis.statistics import blocking_error, mean_and_error
 from swirlight.config import config_hash
-from swirlight.run.picture import draw_response
-from swirlight.run.response import at_the_end_of_light, collect, curves, end_of_light, open_all
+from swirlight.results.delivered import heating
+from swirlight.results.response import respond
+from swirlight.results.trajectories import Experiment
+from swirlight.run.picture import draw_response, envelope
 from swirlight.store.durable import write_json
 from swirlight.store.run import open_run, read_json
 
 AVERAGED = {"temperature": "K", "pressure": "bar", "potential_energy": "kJ mol-1"}
+SIGNALS = ("light_impulse", "angular_momentum", "alignment")
 
 
 def write_summary(work, timings):
@@ -19,8 +22,9 @@ def write_summary(work, timings):
     work : Work, its exposures complete; timings : phase -> seconds.
     Returns the summary.
     """
-    run = open_all(open_run(work.folder.root), work.exposures)
-    found = curves(run, work.exposures, work.pulses) if work.pulses else {}
+    experiment = Experiment(open_run(work.folder.root), work.system, work.pulses)
+    twins = {"plus", "minus"} <= set(experiment.kinds) and len(experiment) > 0
+    found = {name: respond(experiment, name) for name in SIGNALS} if work.pulses and twins else {}
     bodies = work.system.bodies
     summary = {
         "version": __version__,
@@ -30,16 +34,17 @@ def write_summary(work, timings):
         "species": {s.name: {"count": n, "source": s.source}
                     for s, n in zip(work.system.species, work.system.counts, strict=True)},
         "spacing": {"value": work.spacing["value"], "unit": "ps", "seen": work.spacing["found"]},
-        "exposures": [_exposure(run, e, bodies) for e in work.exposures],
-        "averages": _averages(run, work.exposures, bodies),
-        "response": at_the_end_of_light(found, work.pulses) if found else {},
-        "ledgers": _ledgers(run, work.exposures, bodies),
-        "heating": _heating(run, work) if found else {},
+        "exposures": [_exposure(experiment.found, e, bodies) for e in work.exposures],
+        "averages": _averages(experiment, bodies),
+        "response": {name: response.parts() for name, response in found.items()},
+        "ledgers": _ledgers(experiment, bodies),
+        "heating": heating(experiment) if found else {},
         "timings": {name: {"value": t, "unit": "s"} for name, t in timings.items()},
         "warnings": [*(read_json(work.folder.notes) or []), *_unsettled(work)],
     }
     if found:
-        _draw(run, work, found)
+        draw_response(work.folder.picture, work.config.title, found["angular_momentum"],
+                      envelope(work.pulses, work.config.stages[-1].length))
     write_json(work.folder.summary, summary)
     return summary
 
@@ -55,13 +60,12 @@ def _unsettled(work):
              " one another; lengthen that stage, or give the spacing"]]
 
 
-def _exposure(run, exposure, bodies):
-    key = (exposure.kind, exposure.start, exposure.phase)
-    complete = key in run and run[key].complete
+def _exposure(found, exposure, bodies):
+    totals = found.get((exposure.kind, exposure.start, exposure.phase))
+    complete = totals is not None and totals.complete
     entry = {"kind": exposure.kind, "start": exposure.start, "phase": exposure.phase,
              "complete": complete}
     if complete:
-        totals = run[key]
         entry["steps"] = int(totals["temperature"].steps[-1])
         entry["energy_residual"] = {
             "value": float(np.abs(np.asarray(totals["energy_residual"])).max()) / bodies,
@@ -71,102 +75,32 @@ def _exposure(run, exposure, bodies):
     return entry
 
 
-def _averages(run, exposures, bodies):
+def _averages(experiment, bodies):
     """Means over the unlit trajectories' time, errors over starts where there are several."""
     found = {}
-    kind = "dark" if any(e.kind == "dark" for e in exposures) else None
-    if kind is None:
+    if "dark" not in experiment.kinds or not len(experiment):
         return found
     for name, unit in AVERAGED.items():
-        per_start = collect(run, exposures, lambda t, n=name: np.mean(np.asarray(t[n])))[kind]
-        if not len(per_start):
-            continue
         per = bodies if name == "potential_energy" else 1
-        if len(per_start) > 1:
-            value, error, _ = mean_and_error(per_start / per)
-            error = float(error)
-        else:
-            series = np.asarray(run[kind, exposures[0].start, 0][name]) / per
-            value, error = series.mean(), blocking_error(series)
-        found[name] = {"value": float(value), "error": error, "unit": unit, "n": len(per_start)}
+        rows = experiment.collect(lambda t, n=name, p=per: np.asarray(t[n]) / p, ["dark"])["dark"]
+        value, error, _ = mean_and_error(rows.mean(axis=1))
+        if len(rows) == 1:
+            error = blocking_error(rows[0])
+        found[name] = {"value": float(value), "error": float(error), "unit": unit, "n": len(rows)}
     return found
 
 
-def _ledgers(run, exposures, bodies):
+def _ledgers(experiment, bodies):
     """Kind -> what each cause gave to a body by the end, means over starts with errors."""
     found = {}
-    for name, unit, per in (("light_work", "kJ mol-1", bodies), ("bias_work", "kJ mol-1", bodies),
-                            ("bath_work", "kJ mol-1", bodies),
-                            ("absorbed_energy", "kJ mol-1", bodies),
-                            ("energy_residual", "kJ mol-1", bodies)):
-        rows = collect(run, exposures, lambda t, n=name: float(t[n][-1]))
+    for name in ("light_work", "bias_work", "bath_work", "absorbed_energy", "energy_residual"):
+        rows = experiment.collect(lambda t, n=name: float(t[n][-1]) / bodies)
         found[name] = {
-            kind: {"value": float(m), "error": float(e), "unit": unit, "per": "body"}
+            kind: {"value": float(m), "error": float(e), "unit": "kJ mol-1", "per": "body"}
             for kind, values in rows.items() if len(values)
-            for m, e, _ in [mean_and_error(values / per)]
+            for m, e, _ in [mean_and_error(values)]
         }
     return found
-
-
-def _heating(run, work):
-    """How warm it gets: the run's own thermometer, and what the light gave over C_V."""
-    def after_light(trajectory):
-        kelvin = trajectory["temperature"]
-        first = int(np.searchsorted(kelvin.times, end_of_light(work.pulses)))
-        return float(np.mean(kelvin[min(first, len(kelvin) - 1):]))
-
-    rows = collect(run, work.exposures, after_light)
-    lit = [kind for kind in ("plus", "minus") if kind in rows]
-    if not lit or not len(rows[lit[0]]):
-        return {}
-    absorbed = collect(run, work.exposures, lambda t: float(t["absorbed_energy"][-1]))
-    energy = np.mean([absorbed[k] for k in lit]) * units.KJ_PER_MOL
-    capacity, known = _heat_capacity(work.system)
-    done = collect(run, work.exposures, lambda t: float(t["light_work"][-1]))
-    mechanical = np.mean([done[k] for k in lit]) * units.KJ_PER_MOL
-    found = {
-        "work_over_heat_capacity": {"value": float(mechanical / capacity), "unit": "K"},
-        "absorbed_over_heat_capacity": {
-            "value": float(energy / capacity), "unit": "K",
-            "heat_capacity": "of the species' files" if known else
-            "kinetic part alone where no heat capacity is given: an upper bound",
-        },
-    }
-    if "dark" in rows:  # without the dark twin there is nothing to take it from
-        value, error, _ = mean_and_error(np.mean([rows[k] for k in lit], axis=0) - rows["dark"])
-        found["own_temperature"] = {"value": float(value), "error": float(error), "unit": "K",
-                                    "of": "lit less dark, mean from the end of the light on"}
-    return found
-
-
-def _heat_capacity(system):
-    """(C_V of the box, whether every species gives its own). [u nm²/ps²/K]"""
-    total, known = 0.0, True
-    for species, count in zip(system.species, system.counts, strict=True):
-        own = species.heat_capacity
-        known = known and own is not None
-        kinetic = 0.5 * units.BOLTZMANN * (3 + species.freedom)
-        total += count * (kinetic if own is None else own)
-    return total, known
-
-
-def _draw(run, work, found):
-    times = np.linspace(0.0, work.config.stages[-1].length, 1000)
-    intensity = sum(_intensity(pulse, times) for pulse in work.pulses)
-    bodies = work.system.bodies
-    curve = found["angular_momentum"]
-    rows = collect(run, work.exposures,
-                   lambda t: np.asarray(t["energy_residual"])[curve.rows] / bodies)
-    residuals = {kind: (curve.times, values) for kind, values in rows.items()}
-    draw_response(work.folder.picture, work.config.title, curve, (times, intensity), residuals,
-                  end_of_light(work.pulses))
-
-
-def _intensity(pulse, times):
-    """Intensity of a pulse and all its copies. [W/cm²]"""
-    shapes = [np.abs(pulse.amplitude_at(times - centre)) ** 2 for centre in pulse.centres]
-    return pulse.intensity / pulse.amplitude**2 * np.sum(shapes, axis=(0, 2)) if pulse.amplitude \
-        else np.zeros_like(times)
 
 
 def summary_schema():

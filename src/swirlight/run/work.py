@@ -8,12 +8,12 @@ import numpy as np
 
 from swirlight.errors import RunError, StopRequested, SwirlightError
 from swirlight.light.build import bias_from_config, pulses_from_config
+from swirlight.results.trajectories import beam
 from swirlight.run.build import first_state
 from swirlight.run.exposures import list_exposures
 from swirlight.run.folder import RunFolder
 from swirlight.run.header import file_header
 from swirlight.run.record import Recorder, watched_bodies
-from swirlight.run.response import beam
 from swirlight.run.spacing import SAFETY, correlation_times
 from swirlight.run.trajectory import Clock, Leg, Trajectory
 from swirlight.sample import build_system
@@ -36,7 +36,7 @@ class Work:
             self.config.light, self.system, self.config.stages[-1]
         )
         self.bias = bias_from_config(self.config.bias_field)
-        self.beam = beam(self.pulses) if self.pulses else np.array([0.0, 0.0, 1.0])
+        self.beam = beam(self.pulses)
         self.exposures = list_exposures(self.config, self.pulses)
 
     @property

@@ -167,7 +167,7 @@ def write_json(path, content, sync=True):
     does not have, become null.
     sync : force it to the disk as well; needless for what is rewritten every second.
     """
-    text = json.dumps(_plain(content), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    text = json.dumps(plain(content), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
     if sync:
         write_bytes(path, text.encode())
         return
@@ -177,13 +177,14 @@ def write_json(path, content, sync=True):
     os.replace(partial, path)
 
 
-def _plain(content):
+def plain(content):
+    """The same for JSON: numbers and lists of NumPy's, null for NaN and infinity."""
     if isinstance(content, dict):
-        return {str(key): _plain(value) for key, value in content.items()}
+        return {str(key): plain(value) for key, value in content.items()}
     if isinstance(content, np.ndarray | np.generic):
         content = content.tolist()
     if isinstance(content, list | tuple):
-        return [_plain(value) for value in content]
+        return [plain(value) for value in content]
     if isinstance(content, float) and not math.isfinite(content):
         return None
     return content
