@@ -43,11 +43,11 @@ forces: {cutoff: 0.6 nm, electrostatics: none}
 light:
   - {carrier: 800 nm, peak_intensity: 1e12 W/cm^2, duration: 0.05 ps, helicity: -1}
 stages:
-  - {name: settle, length: 0.8 ps, timestep: 2 fs,
+  - {name: settle, length: 0.4 ps, timestep: 4 fs,
      thermostat: {method: langevin, friction: 4 /ps}}
-  - {name: exposure, length: 0.6 ps, lit: true}
+  - {name: exposure, length: 0.48 ps, lit: true}
 exposures: {kinds: [plus, minus, dark], starts: 8, spacing: 0.1 ps}
-record: {every: 20 fs, totals_every: 10 fs}
+record: {every: 40 fs, totals_every: 8 fs}
 """
 
 
