@@ -8,6 +8,7 @@ import pytest
 from swirlight.errors import InputError, RunError
 from swirlight.forces.box import check_box
 from swirlight.forces.laws import CoulombLaw
+from swirlight.forces.neighbours import FLOAT_SLACK
 from swirlight.forces.pairs import PairForces
 
 from .plain_pairs import ATOM, SPCE, TWO, plain_forces, rotation, sample
@@ -104,6 +105,38 @@ def test_restored_list_gives_the_same_bits():
     assert differs  # without the memory the order of the sums is another
     for name, value in pairs.memory().items():
         assert np.array_equal(value, resumed.memory()[name])
+
+
+def sample_with_room(*room):
+    """Bodies in a box with so much room [nm] along its edges beyond one image each."""
+    radius = np.linalg.norm(TWO.sites, axis=1).max()
+    edges = 2 * (0.9 + 2 * radius + FLOAT_SLACK + np.array(room))
+    return sample([TWO], [70], edges)
+
+
+def test_a_thinner_skin_spares_images_and_is_the_same_when_restored():
+    for room, skin in (((0.06, 0.034, 0.5), 0.034), ((0.06, 0.02, 0.5), 0.06),
+                       ((0.0357, 0.0357, 0.0357), 0.0357), ((0.01, 0.5, 0.04), 0.04)):
+        system, position, orientation, box = sample_with_room(*room)
+        pairs, again = PairForces(system, NONE, box), PairForces(system, NONE, box)
+        expected = forces(pairs, position, orientation, box)
+        near = pairs.neighbours
+        assert near.skin == pytest.approx(skin, abs=1e-12)
+        assert (near.repeat == np.where(np.array(room) < near.skin - 1e-12, 2, 1)).all()
+        again.restore(pairs.memory())
+        assert again.neighbours.skin == near.skin
+        assert np.array_equal(forces(again, position, orientation, box)[0], expected[0])
+
+
+def test_rows_point_into_the_records_when_a_box_grows():
+    """Also what fills them up to whole vectors: it is read, though it does not count."""
+    system, position, orientation, box = sample_with_room(-0.05, -0.05, -0.05)
+    pairs = PairForces(system, NONE, box)
+    forces(pairs, position, orientation, box)
+    assert (pairs.neighbours.repeat == 2).all()
+    forces(pairs, position, orientation, 1.5 * box)
+    kind, entries = pairs.neighbours.kinds[0], pairs.neighbours.rows[0, 0].entries
+    assert len(kind.records) == 70 and entries.max() < kind.records.size
 
 
 def test_one_image_per_pair_of_bodies_and_one_per_pair_of_sites():

@@ -55,8 +55,7 @@ class Neighbours:
         """repeat : (3,) times to repeat the box; None: as few as one image per body allows."""
         self.system, self.kinds, self.cutoff = system, kinds, cutoff
         self.dtype, self.wanted_repeat = np.dtype(dtype), repeat
-        self.rows = {(a, b): Rows(np.zeros((own.count, 0), np.int32), np.zeros(own.count, np.int32))
-                     for a, own in enumerate(kinds) for b in range(len(kinds))}
+        self.rows, self.repeat = {}, None
         self.radius = max((k.radius for k in kinds), default=0.0)
         self.skin, self.calls = FIRST_SKIN, 0
         self.last_moved = 0.0  # what the last call found the sites to have moved
@@ -122,7 +121,10 @@ class Neighbours:
         self.box, self._box_bytes = np.array(box), box.tobytes()
         self.position, self.orientation = np.array(position), np.array(orientation)
         self.calls, self.last_moved = 0, 0.0
-        self.skin, self.repeat = self._images()
+        self.skin, repeat = self._images()
+        if not np.array_equal(repeat, self.repeat):
+            # New rows: what fills old ones up to whole vectors may point behind fewer copies.
+            self.rows, self.repeat = self._empty_rows(), repeat
         edge, copies = self.box * self.repeat, int(np.prod(self.repeat))
         unit = (edge / search.WHOLE).astype(np.float32)
         for kind in self.kinds:
@@ -139,15 +141,23 @@ class Neighbours:
         self.unit = np.array([unit, unit - unit.astype(self.dtype)], self.dtype)
         self.made += 1
 
+    def _empty_rows(self):
+        return {(a, b): Rows(np.zeros((own.count, 0), np.int32), np.zeros(own.count, np.int32))
+                for a, own in enumerate(self.kinds) for b in range(len(self.kinds))}
+
     def _images(self):
         """The skin and how often the box is repeated along each edge.
 
         One image per body does while the edge is at least twice the reach; a skin a little
-        thinner is cheaper than another image.
+        thinner is cheaper than another image. Of the skin found, the same is found again: a
+        restored list has the same images.
         """
         skin, room = self.skin, self.box / 2 - self.cutoff - 2 * self.radius - FLOAT_SLACK
         if self.wanted_repeat is not None:
             return skin, np.array(self.wanted_repeat)
-        skin = float(min([skin, *room[(room < skin) & (room >= skin / 2)]]))
+        for width in np.sort(room)[::-1]:
+            if skin / 2 <= width < skin:
+                skin = float(width)
         reach = self.cutoff + 2 * self.radius + skin + FLOAT_SLACK
-        return skin, 2 ** np.ceil(np.log2(np.maximum(2 * reach / self.box, 1))).astype(int)
+        repeat = 2 ** np.ceil(np.log2(np.maximum(2 * reach / self.box, 1))).astype(int)
+        return skin, np.where(room >= skin, 1, repeat)  # rounding must not add an image
