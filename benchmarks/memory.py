@@ -22,8 +22,8 @@ HEAD = ("electrostatics", "empty process MB", "peak MB", "mesh points", "bytes a
         "mesh MB", "kB/body without mesh")
 NOTE = f"""\
 {BODIES} water, {STEPS} steps, one of them with energies. Empty: after the same with {SMALL} bodies,
-kernels loaded. mesh: the arrays that are kept of its points (charges or potential, transform,
-coefficients); what is needed in passing and the splines of the charges count to the bodies."""
+kernels loaded. mesh: the arrays that are kept of its points (charges or potential, coefficients);
+transforms, which are needed in passing, and the splines of the charges count to the bodies."""
 
 
 def peak():
@@ -48,9 +48,9 @@ def run(state, electrostatics):
         return 0, 0
     points = int(np.prod(mesh.mesh))
     # Whatever has a number for every second point or more, and not a row for each charge.
-    kept = {array.ctypes.data: array.nbytes for array in _arrays(list(vars(mesh).values()))
-            if array.size >= points // 2 and len(array) != len(mesh.charge)}
-    return points, sum(kept.values())
+    return points, sum(array.nbytes for array in _arrays(list(vars(mesh).values()))
+                       if array.base is None and array.size >= points // 2
+                       and len(array) != len(mesh.charge))
 
 
 def _arrays(things):
