@@ -117,7 +117,8 @@ def test_starts_count_only_when_all_their_twins_are_there(tmp_path):
     (folder / "dark-002.h5").unlink()
     experiment = Experiment(open_run(folder))
     assert experiment.complete == (0, 3) and experiment.phases == {"plus": 2, "minus": 2, "dark": 1}
-    assert respond(experiment, "angular_momentum").starts == 2
+    found = respond(experiment, "angular_momentum")
+    assert found.starts == 2 and "2 of 4 starts are complete and count" in found.notes
 
 
 def test_refusals_say_why(run, tmp_path):

@@ -282,6 +282,8 @@ def _notes(experiment, observable, kinds):
     if np.array_equal(kinds["plus"], kinds["minus"]):
         yield "no response: the twins are identical"
     n = len(experiment)
+    if n < experiment.wanted:
+        yield f"{n} of {experiment.wanted} starts are complete and count"
     if n == 1:
         yield "one start: no error, no statement"
     elif n < LEAST_STARTS:

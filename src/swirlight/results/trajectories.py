@@ -19,8 +19,8 @@ class Experiment:
     run : of `open_run`; system, pulses : as the run's config says, made from it if not given.
     found : {(kind, start, phase): Trajectory} of all there are, each looked through once and
         closed again, as there may be thousands; reading opens them.
-    kinds : those of the config; complete : numbers of the starts that count; phases : {kind:
-        number of carrier phases}.
+    kinds : those of the config; complete : numbers of the starts that count; wanted : how many
+        the config asks for; phases : {kind: number of carrier phases}.
     """
 
     def __init__(self, run, system=None, pulses=None):
@@ -30,7 +30,7 @@ class Experiment:
             trajectory = self.found[e.kind, e.start, e.phase] = run[e]
             trajectory.close()
         starts = complete_starts(run)
-        self.complete, self.phases = starts.numbers, starts.phases
+        self.complete, self.wanted, self.phases = starts.numbers, starts.wanted, starts.phases
         self.kinds = tuple(k for k in KINDS if k in self.phases)
 
     def __len__(self):

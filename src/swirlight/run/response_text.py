@@ -14,7 +14,7 @@ def response_text(content):
         lines += _table(content["response"], part, title)
     lines += [
         "p: Student's t at that time; p peak: largest |t| at any time from the beginning of the"
-        f" light on, with sign flips over starts (not below {_smallest(content):.1g}); p mean: of"
+        f" light on, with sign flips over starts (not below {_smallest(content):.2g}); p mean: of"
         " the mean over those times.",
         f"starts: that reach p < {content['level']:g} at that time in nine of ten repeats, if mean"
         " and scatter are those seen. Of twenty such p one is below 0.05 by chance.",
