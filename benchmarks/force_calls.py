@@ -85,7 +85,8 @@ the list still good. Lennard-Jones cut plainly and real-space Ewald of {SPLITTIN
 "five" (charge and Lennard-Jones on all five sites) is invented for timing; the atom has argon's
 parameters. twin: plain textbook loop, double, half list with the same skin, one thread
 (textbook.py). script: numpy and scipy, its k-d tree asked for the pairs in every call, as such a
-script does (script.py). 2 threads: time on one thread over time on two. All others: one thread."""
+script does (script.py), and with the pairs given ("same, no tree"). 2 threads: time on one thread
+over time on two. All others: one thread."""
 
 
 def table(quick, thread_counts, rounds):

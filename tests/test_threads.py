@@ -31,13 +31,13 @@ draw_motion(system, start)
 for threads in 1, 2, 3:
     numba.set_num_threads(threads)
     state = start.copy()
-    light = Light(system, (terahertz(1e10, duration=0.01, centre=0.002),))
-    mover = Mover(system, ForceField(system, edges), light, 0.0002,
-                  make_thermostat(system, "langevin", 2.0))
+    light = Light(system, (terahertz(1e10, duration=0.1, centre=0.02),))
+    field = ForceField(system, edges)
+    mover = Mover(system, field, light, 0.001, make_thermostat(system, "langevin", 2.0))
     mover.begin(state)
     for step in range(25):
         mover.advance(state, energies=step % 5 == 4)
-    assert mover.ledger.light_work != 0.0
+    assert mover.ledger.light_work != 0.0 and field.pairs.neighbours.made > 2
     digest = hashlib.sha256(mover.ledger.values.tobytes())
     for name in state.ARRAYS:
         digest.update(getattr(state, name).tobytes())

@@ -251,8 +251,9 @@ def test_a_stage_begins_where_its_mesh_acts():
     with pytest.raises(ConfigError) as caught:
         parse_config(text, overrides=["forces.mesh_every=2"])
     assert [line.split(": ", 1)[1] for line in caught.value.lines] == [
-        "stages[1]: it begins at 0.012 ps, which is no whole multiple of 2 timesteps"
-        ' (forces.mesh_every) of stage stage-2, 0.008 ps; expected one, for example "0.008 ps"']
+        "stages[1]: with the stages before it, it begins at 0.012 ps, which is no whole multiple"
+        ' of 2 timesteps (forces.mesh_every) of stage stage-2, 0.008 ps; expected one, for'
+        ' example "0.008 ps"']
 
 
 def test_overrides_are_named_in_messages():

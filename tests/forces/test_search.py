@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from swirlight.compiled import numba
+from swirlight.errors import InputError
 from swirlight.forces.kernels import records, search
 from swirlight.forces.kernels.lowlevel import _plain_pick, pick
 from swirlight.forces.laws import CoulombLaw
@@ -65,13 +66,19 @@ def test_lists_are_those_of_the_plain_test(species, counts, precision):
             assert set(np.flatnonzero(excess[i] < -2e-6)) <= set(bodies)
 
 
-def test_lists_do_not_depend_on_the_number_of_threads():
-    kept = []
-    for threads in range(1, numba.config.NUMBA_NUM_THREADS + 1):
-        numba.set_num_threads(threads)
-        rows = listed((SPCE,), (700,))[0].rows[0, 0]
-        kept.append([rows.entries[i, :n].tolist() for i, n in enumerate(rows.counts)])
-    assert all(lists == kept[0] for lists in kept)
+@pytest.mark.parametrize(("species", "counts", "pair"), [((TWO, ATOM), (30, 30), (3, 41)),
+                                                         ((SPCE,), (60,), (3, 41))])
+def test_bodies_on_top_of_each_other_are_listed(species, counts, pair):
+    system, position, orientation, box = sample(species, counts, BOX, electrostatics="none")
+    position[pair[1]] = position[pair[0]]
+    neighbours = PairForces(system, NONE, box).neighbours
+    neighbours.make(position, orientation, box)
+    for one, two in (pair, pair[::-1]):
+        a, b = (next(k for k, kind in enumerate(neighbours.kinds) if body in kind.body)
+                for body in (one, two))
+        own, other, rows = neighbours.kinds[a], neighbours.kinds[b], neighbours.rows[a, b]
+        i = int(np.flatnonzero(own.body == one)[0])
+        assert two in other.body[rows.entries[i, : rows.counts[i]] // other.words]
 
 
 def test_a_path_through_all_cells():
@@ -171,3 +178,9 @@ def test_records_hold_centres_and_arms(dtype):
     assert np.abs(wrong).max() < (1e-15 if dtype == np.float64 else 3e-10)
     arms = np.einsum("nij,sj->nsi", rotation(orientation[body]), places).reshape(13, 9)
     assert np.abs(kept[:, 3:12] - np.tile(arms, (4, 1))).max() < np.finfo(dtype).eps
+
+
+def test_more_words_than_an_entry_can_name_are_refused():
+    kind = listed((FIVE,), (90,))[0].kinds[0]
+    with pytest.raises(InputError, match="too many for one box; at most"):
+        kind.make_room(2**31 // (90 * kind.words) + 1, np.float32)

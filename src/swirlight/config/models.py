@@ -153,7 +153,7 @@ class Config(Section):
         for i in range(1, len(self.stages) - 1) if block > 1 else ():  # sampled as one trajectory
             begin = sum(stage.length for stage in self.stages[:i])
             yield from _multiple(("stages", i), begin, self.stages[i], block,
-                                 "it begins at {}, which")
+                                 "with the stages before it, it begins at {}, which")
 
     def _exposed(self):
         if self.exposures is None:

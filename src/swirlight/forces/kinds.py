@@ -4,6 +4,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from swirlight.errors import InputError
 from swirlight.forces.kernels import records, search
 
 CACHE_LINE = 64  # bytes
@@ -92,10 +93,16 @@ class Kind:
         return self.records.view(np.int32)
 
     def make_room(self, copies, dtype):
-        """Arrays for so many copies of each body."""
+        """Arrays for so many copies of each body.
+
+        Raises InputError where there are more words than an entry of a list can name.
+        """
         rows = self.count * copies
         if self.records is not None and len(self.records) == rows:
             return
+        if rows * self.words >= 2**31:
+            raise InputError(f"{rows} bodies (or images of them) of {self.sites} interacting sites"
+                             f" are too many for one box; at most {2**31 // self.words} go in")
         self.records = aligned((rows, self.words), dtype)
         self.image = np.empty((self.count, 3))
         self.reference = np.empty((self.count, self.sites, 3))

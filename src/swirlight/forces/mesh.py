@@ -100,7 +100,6 @@ def _fill_plane(x, mesh, start, taps, base, weight, plane):
             plane[y, z] += plane[mesh[1] + y, z]
     for y in range(mesh[1]):
         put_row(plane, (y, 0), fused(one, row_at(plane, (y, 0)), row_at(plane, (y, mesh[2]))))
-        put_row(plane, (y, mesh[2]), zero)
 
 
 @kernel(fast=True, **INNER)

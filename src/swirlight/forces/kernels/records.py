@@ -49,10 +49,13 @@ def _place_some(begin, end, position, orientation, body, site, edge, repeat, ane
     n, sites, furthest = body.shape[0], site.shape[0], 0.0
     per_edge = 1.0 / edge[0], 1.0 / edge[1], 1.0 / edge[2]
     per_copy = 1.0 / repeat[0], 1.0 / repeat[1], 1.0 / repeat[2]  # exact
+    turns = np.any(site != 0.0)  # an atom's only site is its centre
+    turn = matrix_entries(1.0, 0.0, 0.0, 0.0)
     for i in range(begin, end):
         b = body[i]
-        turn = matrix_entries(orientation[b, 0], orientation[b, 1], orientation[b, 2],
-                              orientation[b, 3])
+        if turns:
+            turn = matrix_entries(orientation[b, 0], orientation[b, 1], orientation[b, 2],
+                                  orientation[b, 3])
         for s in range(sites):
             distance2 = 0.0
             for k in range(3):

@@ -18,6 +18,7 @@ from swirlight.forces.kernels.lowlevel import at, pick, streamlined16
 
 WHOLE = 4294967296.0  # 2³²
 LANES = 16
+TINY2 = np.float32(1e-12)  # nm², what R² is lengthened by: centres may lie on each other
 NOWHERE = np.float32(-1e30)  # half an edge of a box that nothing reaches
 
 
@@ -80,7 +81,7 @@ def bound(inner_place, inner_half, count, unit, place, half):
                 low = min(low, apart - inner_half[k, q])
                 high = max(high, apart + inner_half[k, q])
             place[k, b] = np.int32(first + np.int64(0.5 * (low + high) / unit[k]))
-            half[k, b] = 0.5 * (high - low) + 1e-6  # more than rounding
+            half[k, b] = 0.5 * (high - low) * (1 + 1e-6) + 1e-6  # more than rounding
 
 
 @kernel(fast=True, **INNER)
@@ -143,7 +144,7 @@ def _judge(blocks, count, word, place, arm, site, mine, x, y, z, three, unit, re
             dx = np.float32(np.int32(at(px, first, k) - x)) * ux
             dy = np.float32(np.int32(at(py, first, k) - y)) * uy
             dz = np.float32(np.int32(at(pz, first, k) - z)) * uz
-            r2 = dx * dx + dy * dy + dz * dz
+            r2 = dx * dx + dy * dy + dz * dz + TINY2
             p = dx * x0 + dy * y0 + dz * z0
             q = dx * x1 + dy * y1 + dz * z1
             r = dx * x2 + dy * y2 + dz * z2
@@ -168,7 +169,8 @@ def _near_blocks(x, y, z, hx, hy, hz, block, half, group, group_half, number, un
                  near, near_half, near_number):
     """Copy the blocks within reach of a box to `near`, what they are to `near_number`; how many.
 
-    The copies are filled up to whole vectors.
+    The copies are filled up to whole vectors. Every block looks at all groups: N²/65536 tests for
+    N bodies, which is little beside the rest up to some 10⁶.
     """
     begin, end, groups = np.int64(0), group.shape[1], 0
     _judge_boxes(group, group_half, begin, end, x, y, z, hx, hy, hz, unit, far2, value)

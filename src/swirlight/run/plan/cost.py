@@ -6,7 +6,7 @@ import pathlib
 import shutil
 
 from swirlight.run.plan.page import Notice, Row, Section
-from swirlight.run.rates import expected_rate, pair_count, workload
+from swirlight.run.rates import expected_rate, workload
 
 # Numbers that a frame holds for each body (position brings `image`, int32), and for the box.
 COMPONENTS = {"orientation": 4, "axes": 9}
@@ -16,10 +16,10 @@ MEBIBYTE = 2.0**20
 
 # Memory of a process, measured: the interpreter with everything loaded, and per-part sizes.
 PROCESS_BYTES = 290e6
-BODY_BYTES, SITE_BYTES = 1500.0, 400.0
-LIST_SHARE = 1.6  # entries of the neighbour list per pair inside the cut-off: skin and padding
-MESH_SPACING = 0.1  # nm, where it is chosen automatically
-MESH_POINT_BYTES = 24.0
+BODY_BYTES, SITE_BYTES, CHARGE_BYTES = 650.0, 90.0, 330.0  # the last where there is a mesh
+LIST_SKIN, LIST_SHARE = 0.07, 1.1  # nm beyond the cut-off; room over entries of the list
+MESH_SPACING = 0.09  # nm, where it is chosen automatically
+MESH_POINT_BYTES = {"mixed": 16.0, "double": 32.0}  # kept, and needed in passing
 SEGMENT_BYTES = 64e6  # frames of a segment, twice while it is sealed
 
 
@@ -120,10 +120,14 @@ def memory_bytes(subject):
     forces = system.interactions
     bytes_ = PROCESS_BYTES + SEGMENT_BYTES
     bytes_ += BODY_BYTES * system.bodies + SITE_BYTES * len(system.type_of_site)
-    bytes_ += 8.0 * LIST_SHARE * pair_count(system, box)  # both directions, int32
+    reach = forces.cutoff + LIST_SKIN + max(species.radius for species in system.species)
+    listed = system.bodies / math.prod(box) * 4.0 / 3.0 * math.pi * reach**3
+    bytes_ += 4.0 * LIST_SHARE * system.bodies * listed
     if forces.electrostatics == "mesh-ewald":
         spacing = forces.mesh_spacing or MESH_SPACING
-        bytes_ += MESH_POINT_BYTES * math.prod(edge / spacing for edge in box)
+        points = math.prod(edge / spacing for edge in box)
+        bytes_ += MESH_POINT_BYTES[forces.precision] * points
+        bytes_ += CHARGE_BYTES * (system.site_charge != 0.0).sum()
     return bytes_
 
 
