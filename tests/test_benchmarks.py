@@ -5,6 +5,7 @@ import json
 import pathlib
 import sys
 
+import h5py
 import numpy as np
 import pytest
 
@@ -106,3 +107,14 @@ def test_compiling_while_timing_is_noticed(benchmarks):
             fresh(1)
     with timing.nothing_compiled():
         fresh(2)
+
+
+def test_the_correlated_noise_is_what_was_written(benchmarks, tmp_path):
+    analysis, path = benchmarks("analysis"), tmp_path / "dark-000.h5"
+    analysis.write_noise(path, 300, 20)
+    found = analysis.correlate(path, 10)
+    with h5py.File(path) as file:
+        x = file["particles/bodies/torque/value"][()].astype(float)
+    for lag in (0, 7):
+        plain = np.einsum("tnp,tnq->pq", x[: 300 - lag], x[lag:]) / (20 * (300 - lag))
+        np.testing.assert_allclose(found[0, 10 + lag], plain, rtol=0, atol=1e-10)

@@ -116,7 +116,8 @@ class _Accumulator:
         q = b.shape[2]
         if not 0 <= longest < frames:
             raise ValueError(f"a lag of {longest} frames in a record of {frames}")
-        self.longest, self.shared = longest, b is a and pieces == 1
+        self.longest, self.own = longest, b is a
+        self.shared = self.own and pieces == 1  # one transform for both
         self.edges = np.linspace(0, frames, pieces + 1).astype(int)
         # Origins of each piece, and where their partners lie.
         self.cuts = [(slice(s, e), slice(max(0, s - longest), min(frames, e + longest)))
@@ -140,15 +141,19 @@ class _Accumulator:
         self.bodies += a.shape[1]
         first = self._as_rows(0, a)
         second = first if b is a else self._as_rows(1, b)
-        for rows, sums, squares in zip((first, second), self.frame_sums, self.squares,
-                                       strict=True):
-            sums += rows[..., : len(a)].sum(axis=0).T
-            for k, (s, e) in enumerate(zip(self.edges, self.edges[1:], strict=False)):
-                squares[k] += np.einsum("npt,npt->p", rows[..., s:e], rows[..., s:e])
+        self._add_sums(0, first)
+        if b is not a:
+            self._add_sums(1, second)
         for start in range(0, a.shape[1], self.some):
             part = slice(start, start + self.some)
             for k, (here, there) in enumerate(self.cuts):
                 self._add_spectra(k, first[part, :, here], second[part, :, there])
+
+    def _add_sums(self, which, rows):
+        self.frame_sums[which] += rows[..., : len(self.frame_sums[which])].sum(axis=0).T
+        if not self.own:
+            for k, (s, e) in enumerate(zip(self.edges, self.edges[1:], strict=False)):
+                self.squares[which][k] += np.einsum("npt,npt->p", rows[..., s:e], rows[..., s:e])
 
     def _as_rows(self, which, values):
         """(bodies, components, length) float64, each row contiguous and zero after the frames."""
@@ -187,6 +192,9 @@ class _Accumulator:
         for k, (here, there) in enumerate(self.cuts):
             wrapped = fft.irfft(self.spectra[k], self.size)
             products[k] = np.moveaxis(wrapped[..., lags + here.start - there.start], -1, 0)
+        if self.own:  # Σa² is the product at lag 0
+            self.frame_sums[1] = self.frame_sums[0]
+            self.squares = 2 * [products[:, self.longest].diagonal(axis1=1, axis2=2)]
         return LaggedSums(lags, products, self.edges, *self.frame_sums, *self.squares, self.bodies)
 
 

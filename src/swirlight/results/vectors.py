@@ -12,7 +12,7 @@ from swirlight.errors import InputError
 from swirlight.rotation import to_body
 from swirlight.store.trajectory import AXES
 
-BLOCK = 3_000_000  # numbers in a block, float64
+BLOCK = 8_000_000  # numbers in a block
 CHUNK = 16  # bodies that lie together in a file
 FRAMES = ("lab", "body")
 TOTAL = "total_"
