@@ -35,6 +35,7 @@ def test_one_start_has_no_error_and_equal_starts_have_none_to_spread():
     assert np.isnan(mean_and_error([1.0])[1]) and np.isnan(half_width(1.0, 1))
     assert mean_and_error([2.0, 2.0])[1:] == (0.0, 0.0)
     assert mean_and_error([0.0, 0.0])[1:] == (0.0, 1.0)
+    assert np.isnan(mean_and_error([np.nan, np.nan])).all()
 
 
 @pytest.mark.parametrize("starts", [4, 8, 16])

@@ -17,3 +17,4 @@ def test_verdicts():
     assert verdict(figures([1.0, 1.01, 0.99, 1.0])) == DETECTED
     assert verdict(figures([1.0, 0.6, 0.2, 1.1])).startswith("a hint; if it is this large, some ")
     assert verdict(figures([1.0, -1.0, 0.01, 0.0])) == "not told from zero"
+    assert verdict(figures([float("nan"), float("nan")])) == "not defined"  # alignment of atoms

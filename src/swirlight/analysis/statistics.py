@@ -25,7 +25,7 @@ def mean_and_error(values):
 
     values : (starts, ...). Returns three arrays (...). One start has no error and no p (NaN);
     starts that agree to the last bit have error 0, and p is 0 where the mean is not 0 and 1
-    where it is.
+    where it is. What is not a number has neither.
     """
     values = np.asarray(values, float)
     n, mean = len(values), values.mean(axis=0)
@@ -35,7 +35,7 @@ def mean_and_error(values):
     error = values.std(axis=0, ddof=1) / np.sqrt(n)
     with np.errstate(divide="ignore", invalid="ignore"):
         t = np.abs(mean) / error
-    p = 2 * stats.t.sf(np.where(error > 0, t, np.inf), n - 1)
+    p = 2 * stats.t.sf(np.where(error == 0, np.inf, t), n - 1)
     return mean, error, np.where((error == 0) & (mean == 0), 1.0, p)
 
 

@@ -36,7 +36,7 @@ def response(
     found = overview(folder, of, level)
     experiment = found.experiment
     draw_response(path, experiment.config.title, found.drawn,
-                  envelope(experiment.pulses, experiment.config.stages[-1].length))
+                  envelope(experiment.pulses, experiment.config.stages[-1].length), found.impulse)
     typer.echo(json.dumps(plain(found.content), indent=2, ensure_ascii=False) if as_json
                else response_text(found.content))
     typer.echo(f"picture: {path}", err=True)

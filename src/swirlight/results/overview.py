@@ -15,10 +15,12 @@ TURNING = ("light_impulse", "angular_momentum")  # the signals that the answer r
 
 @dataclass(frozen=True)
 class Overview:
-    """experiment : Experiment; drawn : the Response to draw; content : plain numbers, texts."""
+    """experiment : Experiment; drawn : the Response to draw; impulse : that of the light impulse;
+    content : plain numbers, texts."""
 
     experiment: Experiment
     drawn: Response
+    impulse: Response
     content: dict
 
 
@@ -44,7 +46,7 @@ def overview(folder, of=None, level=CLEAR):
         "heating": heating(experiment), "control": control(experiment), "notes": _notes(found),
         "drawn": _curves(drawn),
     }
-    return Overview(experiment, drawn, content)
+    return Overview(experiment, drawn, found["light_impulse"], content)
 
 
 def _recorded(experiment):

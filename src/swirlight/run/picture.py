@@ -16,8 +16,9 @@ from swirlight.store.durable import write_bytes
 
 ODD = {"color": "#1b4965", "linestyle": "-", "linewidth": 2.0}
 EVEN = {"color": "#c1666b", "linestyle": "--", "linewidth": 1.5}
+IMPULSE = {"color": "0.15", "linestyle": "-.", "linewidth": 1.2}
 DARK = {"color": "0.35", "linestyle": ":", "linewidth": 1.5}
-GAIN_SHOWN = 1e8  # a larger gain is a matter of rounding
+GAIN_SHOWN = 1e12  # a larger gain is a matter of rounding
 
 
 def envelope(pulses, length):
@@ -32,10 +33,11 @@ def _intensity(pulse, times):
         else np.zeros_like(times)
 
 
-def draw_response(path, title, response, light):
+def draw_response(path, title, response, light, impulse=None):
     """Write the picture of a Response, along the beam.
 
-    path : .png, .svg or .pdf; light : (times, intensities) of `envelope`.
+    path : .png, .svg or .pdf; light : (times, intensities) of `envelope`; impulse : Response of
+    the light impulse, drawn beside that of the angular momentum, which decays from it.
     """
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
@@ -47,7 +49,8 @@ def draw_response(path, title, response, light):
                              height_ratios=(1, 2.4, 1.4, 1.2) if dark else (1, 2.4, 1.2))
     figure.suptitle(title, fontsize=11)
     _draw_envelope(panels[0], *light)
-    _draw_parts(panels[1], response)
+    beside = response.observable.name == "angular_momentum"
+    _draw_parts(panels[1], response, impulse if beside else None)
     if dark:
         _draw_band(panels[2], along.times, along.dark, "dark", DARK)
         panels[2].legend(frameon=False, fontsize=9)
@@ -81,12 +84,15 @@ def _draw_band(axes, times, values, name, style):
     axes.plot(times, mean, label=name, **style)
 
 
-def _draw_parts(axes, response):
+def _draw_parts(axes, response, impulse):
     along, starts = response.along, response.starts
     for part, name, style in (("odd", "odd in helicity", ODD), ("even", "even", EVEN)):
         values = along.of_starts(part)
         if values is not None:
             _draw_band(axes, along.times, values, name, style)
+    if impulse is not None:
+        _draw_band(axes, impulse.times, impulse.along.of_starts("odd"),
+                   "odd impulse that the light delivered", IMPULSE)
     axes.axhline(0.0, color="0.5", linewidth=0.6)
     bands = "bands: 95 % over starts" if starts > 1 else "one start: no band"
     axes.legend(title=f"{starts} start{'s' * (starts > 1)}, {bands}", frameon=False, fontsize=9,

@@ -62,6 +62,8 @@ def _smallest(content):
 
 def _pairing(pairing):
     parted = pairing["parted"]
+    if not pairing["gain"] < float("inf"):
+        return f"pairing: at {pairing['at']:.2f} ps the twins do not differ from start to start."
     text = (f"pairing: at {pairing['at']:.2f} ps twins of opposite helicity cut the variance of"
             f" their difference of angular momentum {number(pairing['gain'])} times;")
     text += (" they have not parted by the end" if parted is None else

@@ -44,7 +44,7 @@ def write_summary(work, timings):
     }
     if found:
         draw_response(work.folder.picture, work.config.title, found["angular_momentum"],
-                      envelope(work.pulses, work.config.stages[-1].length))
+                      envelope(work.pulses, work.config.stages[-1].length), found["light_impulse"])
     write_json(work.folder.summary, summary)
     return summary
 
