@@ -49,7 +49,7 @@ record: {{every: 40 fs, vectors: [orientation, angular_momentum], totals_every: 
 """
 
 
-def launch(folder, light=OPTICAL, length="6 ps", starts=6):
+def launch(folder, light=OPTICAL, length="4 ps", starts=8):
     """The finished run."""
     folder.mkdir(exist_ok=True)
     for name, text in (("lone-rod", ROD), ("lone-slab", SLAB)):

@@ -16,6 +16,7 @@ from functools import partial
 
 import numpy as np
 from scipy import stats
+from scipy.ndimage import uniform_filter1d
 
 from swirlight.analysis.kubo import FEWEST, noise_lag
 from swirlight.analysis.statistics import LEAST_STARTS, largest_t, mean_and_error
@@ -43,8 +44,8 @@ class LinearResponse:
     driven, driven_errors : (T,) the response of the lit runs, None where a kind is missing.
     ratio, ratio_error : driven over predicted, weighted least squares over all times; NaN of one
         start.
-    p : of "they agree", twice the smaller of the p of ratio 1 and of the largest |t| over times;
-    parted_at : first time at which they do not [ps], or None.
+    p : of "they agree", twice the smaller of the p of ratio 1 and of the largest |t| over times,
+    NaN below 8 starts; parted_at : first time at which they do not [ps], or None.
     notes : sentences that the reader must see.
     """
 
@@ -129,6 +130,22 @@ def linear_response(run, observable="angular_momentum", longest_lag=None):
                    _notes(subject, parts, kernels, lags))
 
 
+def linear_overview(run, longest_lag=None):
+    """[LinearResponse] of everything that the light of a run moves and its dark runs can tell.
+
+    Raises InputError as `linear_response` where that is nothing at all.
+    """
+    found, refusals = [], []
+    for name in OBSERVABLES:
+        try:
+            found.append(linear_response(run, name, longest_lag))
+        except InputError as refusal:
+            refusals.append(refusal)
+    if not found:
+        raise refusals[0]
+    return [r for r in found if r.values.any()] or found
+
+
 def linear_range(runs, observable="angular_momentum", longest_lag=None):
     """The LinearRange of runs (or paths) that differ in intensity only."""
     responses = sorted((linear_response(r, observable, longest_lag) for r in runs),
@@ -207,12 +224,14 @@ def _result(subject, name, predict, kernels, driven, rows, lag, notes):
         errors = spread * drawn.std(axis=0) if kernels else np.zeros(len(rows))
         if lit is not None:
             lit_errors = spread * lit_drawn.std(axis=0)
+        if lit is not None and whole.any():  # else there is nothing to compare with
             between = spread * (lit_drawn - drawn).std(axis=0)
-            weights = _weights(between, there)
-            ratio = float(_ratio(lit, whole, weights))
-            ratio_error = float(spread * np.std(_ratio(lit_drawn, drawn, weights)))
             without = drawn_with(1.0 - np.eye(starts))
             pseudo = starts * (lit - whole) - (starts - 1) * (without[1] - without[0])
+            weights = _weights(np.vstack([np.ones(starts), counts]), pseudo, there)
+            ratio = float(_ratio(lit, whole, weights[0]))
+            ratio_error = float(spread * np.std(_ratio(lit_drawn, drawn, weights[1:])))
+        if lit is not None and whole.any() and starts >= LEAST_STARTS:
             p = min(largest_t(pseudo[:, there], random)[0], _p_of_ratio(ratio, ratio_error, starts))
             p = float(min(1.0, 2.0 * p))  # the better of two tests
             parted = _parted(subject.times[rows], lit - whole, between, whole, p)
@@ -233,10 +252,17 @@ def _p_of_ratio(ratio, error, starts):
     return 2.0 * stats.t.sf(abs(ratio - 1.0) / error, starts - 1) if error > 0.0 else 1.0
 
 
-def _weights(errors, there):
-    """(T,) of the times in a ratio: errors⁻², 0 before there is a response."""
-    floor = 1e-3 * errors[there].max(initial=0.0) + np.finfo(float).tiny
-    return there / np.maximum(errors, floor) ** 2
+def _weights(counts, differences, there):
+    """(b, T) of the times in a ratio: variances⁻¹ over starts, 0 before there is a response.
+
+    counts : (b, n) starts of each sample; differences : (n, T). Variances of few starts are
+    rough, and those that chance makes small must not decide: they are averaged over a fifth of
+    the time, and drawn anew with the starts, so that their noise is part of the ratio's error.
+    """
+    share = counts / counts.sum(axis=1, keepdims=True)
+    variance = share @ differences**2 - (share @ differences) ** 2
+    variance = uniform_filter1d(variance, max(3, variance.shape[-1] // 5), mode="nearest")
+    return there / (np.maximum(variance, 0.0) + np.finfo(float).tiny)
 
 
 def _there(predicted, driven):
@@ -269,9 +295,11 @@ def _notes(subject, parts, kernels, lags):
     if abs(off) > WARM and abs(off) > 3 * error:
         said.append(f"rotation in the dark runs is {100 * off:+.0f} % off the temperature that kT"
                     " is taken from: they were not in equilibrium")
-    if starts < LEAST_STARTS:
-        said.append(f"{starts} start{'s' * (starts > 1)}: "
-                    + ("no errors" if starts == 1 else "the errors are rough themselves"))
+    if starts == 1:
+        said.append("1 start: no errors")
+    elif starts < LEAST_STARTS:
+        said.append(f"{starts} starts: the errors are rough themselves, and whether curves part is"
+                    f" not told; {LEAST_STARTS} are needed")
     return tuple(said)
 
 
