@@ -17,6 +17,7 @@ from scipy.ndimage import gaussian_filter1d
 import swirlight as sw
 from swirlight import units
 from swirlight.analysis import kubo
+from swirlight.cli.main import run as command
 from swirlight.errors import InputError
 from swirlight.report.linear import draw_linear, linear_text, linear_values
 from swirlight.results import linear
@@ -165,6 +166,18 @@ def test_table_values_and_picture(optical, tmp_path):
     assert values["alignment"]["predicted"] == list(found[AVERAGED.index("alignment")].values)
     draw_linear(tmp_path / "linear.svg", found)
     assert "driven, and the limit of weak light" in (tmp_path / "linear.svg").read_text()
+
+
+def test_command(optical, tmp_path, capsys):
+    picture = tmp_path / "weak.png"
+    arguments = ["response", str(optical.path), "--linear", "--picture", str(picture)]
+    assert command(arguments) == 0
+    assert "orientation_along_beam, odd part: linear response" in capsys.readouterr().out
+    assert picture.read_bytes()[:4] == b"\x89PNG"
+    assert command([*arguments, "--of", "alignment", "--json"]) == 0
+    assert set(json.loads(capsys.readouterr().out)) == {"alignment"}
+    assert command([*arguments, "--of", "temperature"]) == 2
+    assert "expected one of angular_momentum" in capsys.readouterr().err
 
 
 @pytest.fixture

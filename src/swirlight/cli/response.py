@@ -15,6 +15,10 @@ def response(
     level: Annotated[
         float, typer.Option(min=1e-9, max=0.5, help="p for which starts are planned.")
     ] = 0.001,
+    linear: Annotated[
+        bool,
+        typer.Option("--linear", help="Beside the limit of weak light, told from the dark runs."),
+    ] = False,
     as_json: Annotated[bool, typer.Option("--json", help="For programs.")] = False,
     picture: Annotated[
         pathlib.Path | None,
@@ -32,6 +36,8 @@ def response(
     from swirlight.run.response_text import response_text
     from swirlight.store.durable import plain
 
+    if linear:
+        return _linear(folder, of, as_json, picture_path(picture, folder, "response-linear.png"))
     path = picture_path(picture, folder, f"response-{find_observable(of or TURNING[1]).name}.png")
     found = overview(folder, of, level)
     experiment = found.experiment
@@ -39,4 +45,15 @@ def response(
                   envelope(experiment.pulses, experiment.config.stages[-1].length), found.impulse)
     typer.echo(json.dumps(plain(found.content), indent=2, ensure_ascii=False) if as_json
                else response_text(found.content))
+    typer.echo(f"picture: {path}", err=True)
+
+
+def _linear(folder, of, as_json, path):
+    from swirlight.report.linear import draw_linear, linear_text, linear_values
+    from swirlight.results.linear import linear_overview, linear_response
+
+    found = [linear_response(folder, of)] if of else linear_overview(folder)
+    draw_linear(path, found)
+    typer.echo(json.dumps(linear_values(found), indent=2, ensure_ascii=False) if as_json
+               else linear_text(found))
     typer.echo(f"picture: {path}", err=True)
