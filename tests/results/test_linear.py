@@ -92,6 +92,12 @@ def test_resolved_light(terahertz):
         linear_response(terahertz, "alignment")
 
 
+def test_range_of_one_weak_run(optical):
+    found = linear_range([optical.path], "alignment")
+    assert found.departs_at is None and len(found.responses) == 1
+
+
+@pytest.mark.slow
 def test_strong_light_is_no_longer_linear(optical, tmp_path):
     """g|G|/4kT of 5: orientation saturates, so driven over predicted falls far below 1."""
     strong = gas.OPTICAL.replace("6e11", "6e13")
