@@ -3,7 +3,7 @@
 import numpy as np
 from scipy.spatial import cKDTree
 
-from swirlight.forces.sites import place_sites
+from swirlight.rotation import to_laboratory
 from swirlight.species.body import GENERAL, Species
 from swirlight.species.frame import body_frame
 from swirlight.species.library import load_species
@@ -58,9 +58,8 @@ def as_in_a_run(name, bodies, **choices):
 
 def site_places(system, state):
     """Where all sites are, inside the box (S, 3) [nm], and the body of each (S,)."""
-    lever = place_sites(system, state.position, state.orientation,
-                        np.empty((len(system.type_of_site), 3)))
     owner = np.repeat(np.arange(system.bodies), np.diff(system.site_start))
+    lever = to_laboratory(state.orientation[owner], system.type_position[system.type_of_site])
     return (state.position[owner] + lever) % state.box % state.box, owner
 
 

@@ -1,50 +1,13 @@
-"""Where the sites of rigid bodies are, and what forces on sites do to the bodies.
+"""Where the charges of rigid bodies are, and what forces on them do to the bodies.
 
-Arrays  S sites of N bodies, body after body; everything in the laboratory frame.
-Layers  kernels check nothing; `place_sites` is their door.
+Arrays  M charges of N bodies, body after body; everything in the laboratory frame. Kernels
+        check nothing.
 """
 
 import numpy as np
 
 from swirlight.compiled import kernel
-
-
-@kernel
-def _place_sites(orientation, species_of, type_start, type_position, site_start, lever):
-    for i in range(orientation.shape[0]):
-        # Written out: `w, x, y, z = orientation[i]` tests lengths, at three times the cost.
-        w, x, y, z = (orientation[i, 0], orientation[i, 1], orientation[i, 2],
-                      orientation[i, 3])
-        first = type_start[species_of[i]]
-        for s in range(site_start[i], site_start[i + 1]):
-            k = first + s - site_start[i]
-            bx, by, bz = type_position[k, 0], type_position[k, 1], type_position[k, 2]
-            lever[s, 0] = ((1 - 2 * (y * y + z * z)) * bx + 2 * (x * y - w * z) * by
-                           + 2 * (x * z + w * y) * bz)
-            lever[s, 1] = (2 * (x * y + w * z) * bx + (1 - 2 * (x * x + z * z)) * by
-                           + 2 * (y * z - w * x) * bz)
-            lever[s, 2] = (2 * (x * z - w * y) * bx + 2 * (y * z + w * x) * by
-                           + (1 - 2 * (x * x + y * y)) * bz)
-
-
-def place_sites(system, position, orientation, out_lever):
-    """Write the lever arm d = R x_body of every site; centre + d is where the site is. [nm]
-
-    position : (N, 3), only its length is looked at. [nm]
-    orientation : (N, 4) unit quaternions, scalar first, body to laboratory.
-    out_lever : (S, 3) float64, overwritten and returned.
-    Raises ValueError for arrays of another shape.
-    """
-    sites = int(system.site_start[-1])
-    if (position.shape != (system.bodies, 3) or orientation.shape != (system.bodies, 4)
-            or out_lever.shape != (sites, 3)):
-        raise ValueError(
-            f"expected shapes ({system.bodies}, 3), ({system.bodies}, 4) and ({sites}, 3), got"
-            f" {position.shape}, {orientation.shape} and {out_lever.shape}"
-        )
-    _place_sites(orientation, system.species_of, system.type_start, system.type_position,
-                 system.site_start, out_lever)
-    return out_lever
+from swirlight.rotation_kernels import matrix_entries
 
 
 @kernel
@@ -55,11 +18,8 @@ def place_charges(position, orientation, first_charge, row, type_position, place
     row : (M,) where type_position has the place of each in its body's frame.
     """
     for i in range(position.shape[0]):
-        w, x, y, z = (orientation[i, 0], orientation[i, 1], orientation[i, 2],
-                      orientation[i, 3])
-        xx, xy, xz = 1 - 2 * (y * y + z * z), 2 * (x * y - w * z), 2 * (x * z + w * y)
-        yx, yy, yz = 2 * (x * y + w * z), 1 - 2 * (x * x + z * z), 2 * (y * z - w * x)
-        zx, zy, zz = 2 * (x * z - w * y), 2 * (y * z + w * x), 1 - 2 * (x * x + y * y)
+        xx, xy, xz, yx, yy, yz, zx, zy, zz = matrix_entries(
+            orientation[i, 0], orientation[i, 1], orientation[i, 2], orientation[i, 3])
         for m in range(first_charge[i], first_charge[i + 1]):
             s = row[m]
             bx, by, bz = type_position[s, 0], type_position[s, 1], type_position[s, 2]
