@@ -148,6 +148,15 @@ def test_errors_are_honest_and_alarms_rare():
     assert np.mean([repeat(1.3).parted_at is not None for _ in range(60)]) > 0.8
 
 
+def test_a_start_drawn_again_and_again_has_weights():
+    """Its variance is 0 and must not make the ratio's error infinite."""
+    differences = np.random.default_rng(2).standard_normal((4, 50))
+    counts = np.array([[1, 1, 1, 1], [4, 0, 0, 0], [0, 0, 4, 0]])
+    weights = linear._weights(counts, differences, np.ones(50, bool))
+    assert np.isfinite(weights).all() and (weights > 0).all()
+    assert weights[1:].max() <= 1000 * weights[0].max() * (1 + 1e-9)
+
+
 def test_longest_lag(optical):
     whole, cut = (linear_response(optical, "angular_momentum", lag) for lag in (None, 0.1))
     assert cut.lag == pytest.approx(0.16)  # lags 0 to 0.1 ps, and never fewer than four

@@ -29,6 +29,7 @@ RESAMPLES = 400  # an error is then known to 4 %, less than a few starts leave o
 LEVEL = 0.05  # p of "they agree at all times" below which they part
 BEYOND = 3.0  # combined standard errors at the time that is named
 BLOCK = 2_000_000  # numbers of a kind held at once
+FLOOR = 1e-100  # of a variance, so that none is 0
 WARM = 0.03  # by which the dark runs may be off the temperature in the formulas
 SHARE = 0.05  # of the largest prediction: less is looked at neither as response nor as parting
 
@@ -255,14 +256,16 @@ def _p_of_ratio(ratio, error, starts):
 def _weights(counts, differences, there):
     """(b, T) of the times in a ratio: variances⁻¹ over starts, 0 before there is a response.
 
-    counts : (b, n) starts of each sample; differences : (n, T). Variances of few starts are
-    rough, and those that chance makes small must not decide: they are averaged over a fifth of
-    the time, and drawn anew with the starts, so that their noise is part of the ratio's error.
+    counts : (b, n) starts of each sample, the first of all once; differences : (n, T).
+    Variances of few starts are rough, and those that chance makes small must not decide: they
+    are averaged over a fifth of the time, and drawn anew with the starts, so that their noise
+    is part of the ratio's error.
     """
     share = counts / counts.sum(axis=1, keepdims=True)
     variance = share @ differences**2 - (share @ differences) ** 2
     variance = uniform_filter1d(variance, max(3, variance.shape[-1] // 5), mode="nearest")
-    return there / (np.maximum(variance, 0.0) + np.finfo(float).tiny)
+    floor = 1e-3 * variance[:1] + 1e-12 * variance[0].max() + FLOOR  # one start drawn n times
+    return there / np.maximum(variance, floor)
 
 
 def _there(predicted, driven):
